@@ -1,0 +1,1 @@
+"""The contract as Pydantic models: what callers post and what they get."""
