@@ -1,0 +1,1 @@
+"""The mechanics: pure functions on arrays and small frozen dataclasses."""

@@ -1,0 +1,123 @@
+"""What takes part in a mode: mass per direction, energy per part, mobility per place."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.linalg import lapack
+
+from service.compute.assembly import Assembly
+from service.compute.machine import Floats, Integers
+from service.compute.pencil import Pencil
+
+
+@dataclass(frozen=True, slots=True)
+class Direction:
+    """Effective masses in one direction of motion of the supports.
+
+    Attributes
+    ----------
+    axis : 0 to 5
+    total : moving mass (kg) or moment of inertia (kg·m²) in that direction
+    effective : of each mode; over all modes they add up to `total`
+    """
+
+    axis: int
+    total: float
+    effective: list[float]
+
+
+def effective_masses(
+    M: Floats, pencil: Pencil, shapes: Floats, directions: tuple[list[int], Floats]
+) -> list[Direction]:
+    """Γ² of each mode, Γ = φᵀMr, r the rigid-body motion of all supports in one direction.
+
+    Parameters
+    ----------
+    M : (n, n) mass matrix of all motions
+    shapes : (n, m) mass-normalized shapes in all motions
+    directions : the d axes and their motions r, (n, d)
+
+    Notes
+    -----
+    Clough and Penzien, Dynamics of Structures, on effective modal mass (from memory). The total is
+    taken over the motions that the ties leave: (RᵀMr)ᵀ(RᵀMR)⁻¹(RᵀMr), which is rᵀMr where
+    nothing is tied.
+    """
+    axes, motions = directions
+    pushed = M @ motions
+    reduced = pushed if pencil.R is None else pencil.R.T @ pushed
+    solved, _ = lapack.dtrtrs(pencil.L, reduced, lower=1)
+    totals = (solved**2).sum(axis=0).tolist()
+    effective = ((shapes.T @ pushed) ** 2).T.tolist()
+    return [
+        Direction(axis, total, part)
+        for axis, total, part in zip(axes, totals, effective, strict=True)
+        if total > 0.0
+    ]
+
+
+def support_motions(assembly: Assembly) -> tuple[list[int], Floats]:
+    """The rigid-body motion of all bodies in each direction that some body can move in.
+
+    Rotations are about the centre of mass of the whole: about axis a a point moves by e_a × arm.
+    Returns the d axes and an (n, d) array.
+    """
+    axes = sorted(set(assembly.axes.tolist()))
+    arms = (assembly.places - centre_of_mass(assembly)[1])[assembly.owners]
+    motions = (assembly.axes[:, None] == axes).astype(float)
+    for column, axis in enumerate(axes):
+        if axis >= 3:
+            ahead, behind = (axis - 2) % 3, (axis - 1) % 3
+            for moving, arm, sign in ((ahead, behind, -1.0), (behind, ahead, 1.0)):
+                rows = assembly.axes == moving
+                motions[rows, column] = sign * arms[rows, arm]
+    return axes, motions
+
+
+def centre_of_mass(assembly: Assembly) -> tuple[float, Floats]:
+    """Mass of what can move (kg) and its centre (3,) in m, from the translations.
+
+    Each body counts once, with the largest mass of its translations.
+    """
+    masses = np.zeros(len(assembly.places))
+    translation = assembly.axes < 3
+    np.maximum.at(masses, assembly.owners[translation], assembly.M.diagonal()[translation])
+    total = float(masses.sum())
+    if total == 0.0:
+        return 0.0, assembly.places.mean(axis=0)
+    return total, masses @ assembly.places / total
+
+
+def strain_shares(assembly: Assembly, shapes: Floats) -> Floats:
+    """(connections, m) share of each connection in the strain energy of the (n, m) shapes."""
+    energy = assembly.k[:, None] * (assembly.J @ shapes) ** 2
+    return _shares(energy, assembly.springs_of, len(assembly.connection_names))
+
+
+def kinetic_shares(M: Floats, owners: Integers, bodies: int, shapes: Floats) -> Floats:
+    """(bodies, m) share of each body in the kinetic energy of the (n, m) shapes."""
+    return _shares(shapes * (M @ shapes), owners, bodies)
+
+
+def _shares(energy: Floats, owners: Integers, parts: int) -> Floats:
+    """Sums over the parts, over the sum of their sizes; 0 where there is no energy."""
+    sums = np.zeros((parts, energy.shape[1]))
+    np.add.at(sums, owners, energy)
+    total = np.abs(sums).sum(axis=0)
+    return sums / np.where(total > 0.0, total, 1.0)
+
+
+def mobility_shares(pencil: Pencil, shapes: Floats, places: list[int]) -> Floats:
+    """(places, m) share of each mode in the driving-point mobility at motions of the machine.
+
+    Over all modes Σφᵢ² = (RM⁻¹Rᵀ)ᵢᵢ, so φᵢ² over that lies between 0 and 1 and has no unit.
+
+    Parameters
+    ----------
+    shapes : (n, m) mass-normalized shapes in all motions
+    places : motions of the machine, 0 to n − 1
+    """
+    R = np.eye(pencil.size)[places] if pencil.R is None else pencil.R[places]
+    solved, _ = lapack.dtrtrs(pencil.L, R.T, lower=1)
+    total = (solved**2).sum(axis=0)[:, None]
+    return np.where(total > 0.0, shapes[places] ** 2 / np.where(total > 0.0, total, 1.0), 0.0)
