@@ -1,0 +1,71 @@
+"""Reading a request: its body within the limit, its media type, its parameters."""
+
+from collections.abc import Collection, Mapping
+from typing import Any
+
+from starlette.requests import Request
+
+from schemas.faults import Fault, Malformed
+from schemas.reading import parse_json
+from service import failures
+
+
+async def body_of(request: Request, limit: int) -> bytes:
+    """The body, refused as soon as it passes `limit` bytes."""
+    announced = request.headers.get("content-length", "")
+    if announced.isascii() and announced.isdigit() and int(announced) > limit:
+        raise _too_large(limit)
+    parts: list[bytes] = []
+    size = 0
+    async for part in request.stream():
+        size += len(part)
+        if size > limit:
+            raise _too_large(limit)
+        parts.append(part)
+    return parts[0] if len(parts) == 1 else b"".join(parts)
+
+
+def _too_large(limit: int) -> failures.TooLarge:
+    return failures.TooLarge(
+        f"The body is larger than {limit} bytes, the limit of this service.",
+        [Fault("", f"larger than {limit} bytes")],
+        {"Connection": "close"},
+    )
+
+
+def json_of(body: bytes, content_type: str) -> Any:
+    """The value of a JSON body.
+
+    Raises
+    ------
+    failures.UnsupportedMedia, failures.Malformed
+    """
+    media = content_type.partition(";")[0].strip().lower()
+    if media not in ("application/json", "") and not media.endswith("+json"):
+        raise failures.UnsupportedMedia(
+            f"The body is '{media[:80]}', but application/json is expected.",
+            headers={"Accept": "application/json"},
+        )
+    try:
+        return parse_json(body)
+    except Malformed as fault:
+        raise failures.Malformed("The body can't be read.", fault.faults) from None
+
+
+def parameters(request: Request, known: Collection[str]) -> Mapping[str, str]:
+    """The parameters of the address, all of which must be `known` and stand once."""
+    if not request.url.query:
+        return {}
+    pairs = request.query_params.multi_items()
+    names = [name for name, _ in pairs]
+    unknown = [name for name in names if name not in known]
+    faults = [Fault("", f"unknown parameter '{name[:64]}'") for name in unknown]
+    faults += [
+        Fault("", f"the parameter '{name}' stands twice")
+        for name in dict.fromkeys(names)
+        if name in known and names.count(name) > 1
+    ]
+    if faults:
+        listed = ", ".join(sorted(known)) or "none"
+        raise failures.UnknownParameter(f"Parameters known here: {listed}.", faults)
+    return dict(pairs)
