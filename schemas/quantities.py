@@ -9,6 +9,7 @@ import re
 import unicodedata
 from dataclasses import dataclass
 from functools import cache, lru_cache
+from tokenize import TokenError
 from typing import Annotated, Any, Literal
 
 from pydantic import AfterValidator, Field, GetCoreSchemaHandler, GetJsonSchemaHandler
@@ -38,6 +39,11 @@ SI_UNITS = {
     "frequency": "turn/s",
     "speed": "turn/min",
     "ratio": "",
+    "pressure": "Pa",
+    "density": "kg/m**3",
+    "area": "m**2",
+    "second moment of area": "m**4",
+    "force": "N",
 }
 SHOWN_UNITS = {
     "mass": "kg",
@@ -53,6 +59,11 @@ SHOWN_UNITS = {
     "frequency": "Hz",
     "speed": "rpm",
     "ratio": "no unit",
+    "pressure": "Pa",
+    "density": "kg/m³",
+    "area": "m²",
+    "second moment of area": "m⁴",
+    "force": "N",
 }
 
 _NUMBER_AND_UNIT = re.compile(
@@ -60,6 +71,18 @@ _NUMBER_AND_UNIT = re.compile(
 )
 _UNIT_CHARACTERS = re.compile(r"[A-Za-zµμΩ°%\"'*/^().\- 0-9]{1,48}")
 _WRITTEN_OTHERWISE = str.maketrans({"·": "*", "×": "*", "⋅": "*", "²": "^2", "³": "^3", "⁴": "^4"})
+# A bare 1/min isn't among them: to some it is a turn, to `pint` a radian.
+_ANGLES = ("radian", "turn", "degree", "revolutions_per_minute", "revolutions_per_second")
+# What `pint` and the tokenizer beneath it raise on text that is no unit.
+_UNPARSED = (
+    ArithmeticError,
+    AssertionError,
+    AttributeError,
+    LookupError,
+    TokenError,
+    TypeError,
+    ValueError,
+)
 _LARGE_EXPONENT = re.compile(r"\d\d|\*\*|\^.*\^|\^\s*-?\s*[5-9]")
 
 
@@ -86,7 +109,8 @@ def unit_factor(unit: str, dimension: str) -> float:
         raise ValueError(f"unknown unit '{unit[:48]}'")
     try:
         given = _registry().Quantity(1.0, _registry().parse_units(text))
-    except (pint.errors.PintError, ValueError, TypeError, AttributeError, AssertionError):
+        _ = 2.0 * given  # refused by decibels and degrees Celsius, which no factor converts
+    except (pint.errors.PintError, *_UNPARSED):
         raise ValueError(f"unknown unit '{unit}'") from None
     if dimension in ("frequency", "speed"):
         return _turns(given, unit, dimension)
@@ -105,7 +129,7 @@ def _turns(given: Any, unit: str, dimension: str) -> float:
     try:
         if any(name.endswith("hertz") for name in names):
             return float(given.to("hertz").magnitude) * per_second
-        if any(name.endswith(("radian", "turn", "degree", "minute")) for name in names):
+        if any(name.endswith(_ANGLES) for name in names):
             return float(given.to("turn/s").magnitude) * per_second
     except pint.errors.PintError:
         pass
@@ -190,6 +214,8 @@ class Quantity:
             raise fault("must be a finite number")
         if number < 0.0 and self.sign != "any":
             raise fault("must not be negative")
+        if abs(number) < SMALLEST and self.dimension == "length" and self.sign == "any":
+            return 0.0  # what roundoff leaves of a coordinate
         if not SMALLEST <= abs(number) <= LARGEST:
             raise fault(f"must lie between {SMALLEST:g} and {LARGEST:g} in size")
         return number
@@ -221,15 +247,24 @@ class Quantity:
 Mass = Annotated[float, Quantity("mass", "not negative")]
 Length = Annotated[float, Quantity("length")]
 PositiveLength = Annotated[float, Quantity("length", "positive")]
+NonNegativeLength = Annotated[float, Quantity("length", "not negative")]
+Area = Annotated[float, Quantity("area", "positive")]
+SecondMoment = Annotated[float, Quantity("second moment of area", "positive")]
 Inertia = Annotated[float, Quantity("inertia", "not negative")]
 InertiaProduct = Annotated[float, Quantity("inertia")]
 Gravity = Annotated[float, Quantity("acceleration", "not negative")]
+Force = Annotated[float, Quantity("force")]
 Stiffness = Annotated[float, Quantity("stiffness")]
+PositiveStiffness = Annotated[float, Quantity("stiffness", "positive")]
 RotationalStiffness = Annotated[float, Quantity("rotational stiffness")]
+PositiveRotationalStiffness = Annotated[float, Quantity("rotational stiffness", "positive")]
 AnyStiffness = Annotated[float, Quantity("stiffness", or_dimension="rotational stiffness")]
 Damping = Annotated[float, Quantity("damping", "not negative")]
+SignedDamping = Annotated[float, Quantity("damping")]
 RotationalDamping = Annotated[float, Quantity("rotational damping", "not negative")]
 AnyDamping = Annotated[float, Quantity("damping", "not negative", "rotational damping")]
+Pressure = Annotated[float, Quantity("pressure", "positive")]
+Density = Annotated[float, Quantity("density", "positive")]
 Ratio = Annotated[float, Quantity("ratio", "not negative")]
 SignedRatio = Annotated[float, Quantity("ratio")]
 PositiveRatio = Annotated[float, Quantity("ratio", "positive")]
@@ -240,6 +275,8 @@ Speed = Annotated[float, Quantity("speed", "not negative")]
 PositiveSpeed = Annotated[float, Quantity("speed", "positive")]
 
 Point = Annotated[list[Length], Field(min_length=3, max_length=3)]
+Component = Annotated[float, Field(strict=True, allow_inf_nan=False, ge=-LARGEST, le=LARGEST)]
+Direction = Annotated[list[Component], Field(min_length=3, max_length=3)]
 
 # A letter or digit of any script first. Marks are what many scripts write their vowels with.
 _NAME = re.compile(r"[^\W_][\w .\-]{0,63}")

@@ -10,7 +10,7 @@ from pydantic import BaseModel, TypeAdapter, ValidationError
 from pydantic_core import ErrorDetails
 
 from schemas.faults import Fault, Invalid, Malformed, pointer
-from schemas.references import fill_defaults, system_faults
+from schemas.references import fill_defaults, normalize_names, system_faults
 from schemas.system import AnySystem, System
 
 M = TypeVar("M", bound=BaseModel)
@@ -85,6 +85,7 @@ def read(model: type[M], raw: object) -> M:
         With every fault that was found.
     """
     system = raw.get("system") if isinstance(raw, dict) else None
+    normalize_names(system)
     faults = list(system_faults(system))
     filled = fill_defaults(system) if isinstance(system, dict) else set()
     question: M = _validated(
@@ -104,6 +105,7 @@ def read_system(raw: object) -> AnySystem:
     Invalid
         With every fault that was found.
     """
+    normalize_names(raw)
     faults = list(system_faults(raw))
     filled = fill_defaults(raw) if isinstance(raw, dict) else set()
     system: AnySystem = _validated(_system_validator(), raw, faults, filled)

@@ -7,11 +7,13 @@ faults of both kinds. They pass over whatever is of the wrong type: the models n
 from collections.abc import Callable, Iterator
 from math import isfinite
 from typing import Any
+from unicodedata import normalize
 
 from schemas.faults import Fault, pointer
 from schemas.quantities import MOTIONS, measures, split_degree_of_freedom
 
 Raw = dict[str, Any]
+PLACED = ("spring", "damper", "bearing", "pad")  # kinds whose `at` is the first body's by default
 ROTATIONS = frozenset(MOTIONS[3:])
 
 
@@ -25,6 +27,31 @@ def _motions(value: object, default: list[str]) -> list[str]:
     if isinstance(value, list) and all(isinstance(motion, str) for motion in value):
         return value
     return default
+
+
+def normalize_names(system: object) -> None:
+    """Write every name of `system` in its composed form (Unicode NFC), so that equal names match.
+
+    One letter may be posted as itself or as a letter and its accent.
+    """
+    if not isinstance(system, dict):
+        return
+    for field in ("bodies", "connections"):
+        for _, item in _items(system.get(field)):
+            for key in ("name", "body"):
+                if key in item:
+                    item[key] = _composed(item[key])
+            if isinstance(item.get("between"), list):
+                item["between"] = [_composed(end) for end in item["between"]]
+    if isinstance(system.get("degrees_of_freedom"), list):
+        names = system["degrees_of_freedom"]
+        system["degrees_of_freedom"] = [_composed(name) for name in names]
+
+
+def _composed(name: object) -> object:
+    if not isinstance(name, str) or name.isascii():
+        return name
+    return normalize("NFC", name)
 
 
 def fill_defaults(system: Raw) -> set[tuple[str | int, ...]]:
@@ -44,7 +71,7 @@ def fill_defaults(system: Raw) -> set[tuple[str | int, ...]]:
         if isinstance(body.get("name"), str):
             places.setdefault(body["name"], body.get("at", [0.0, 0.0, 0.0]))
     for index, connection in _items(system.get("connections")):
-        if "at" in connection or connection.get("kind") in ("pendulum", "link"):
+        if "at" in connection or connection.get("kind") not in PLACED:
             continue
         first = next((end for end in _ends(connection) if end in places), None)
         if first is not None:
@@ -83,6 +110,28 @@ def _names(system: Raw) -> Iterator[Fault]:
             if name in seen:
                 yield Fault(place, f"the name '{name}' stands already at {seen[name]}")
             seen.setdefault(name, place)
+    yield from _inner_points(system, seen)
+
+
+def _inner_points(system: Raw, seen: dict[str, str]) -> Iterator[Fault]:
+    """A name like that of a beam's inner point, NAME.1, belongs to that point."""
+    for index, part in _items(system.get("connections")):
+        name, elements = part.get("name"), part.get("elements", 4)
+        if part.get("kind") != "beam" or not isinstance(name, str) or not isinstance(elements, int):
+            continue
+        taken = [f"{name}.{number}" for number in range(1, min(elements, 500))]
+        for point in taken:
+            if point in seen:
+                yield Fault(
+                    seen[point],
+                    f"'{point}' is the name of an inner point of the beam at "
+                    f"{pointer(('connections', index))}",
+                )
+        if taken and len(taken[-1]) > 64:
+            yield Fault(
+                pointer(("connections", index, "name")),
+                "too long: the names of the beam's inner points would pass 64 characters",
+            )
 
 
 def _bodies(system: Raw) -> Iterator[Fault]:
@@ -270,11 +319,72 @@ def _link(link: Raw, at: At, motions: MotionsOf) -> Iterator[Fault]:
             )
 
 
+def _shaft(shaft: Raw, at: At, motions: MotionsOf) -> Iterator[Fault]:
+    shared = _shared_rotations(shaft, motions)
+    if shared is None:
+        return
+    if not shared:
+        yield Fault(pointer((*at, "between")), "the two have no rotation in common to twist")
+    elif "axis" in shaft:
+        if shaft["axis"] in ROTATIONS and shaft["axis"] not in shared:
+            yield Fault(pointer((*at, "axis")), f"the ends don't turn in '{shaft['axis']}'")
+    elif len(shared) > 1 and "ground" in _ends(shaft):
+        yield Fault(
+            pointer((*at, "between")), "the body has several rotations: say which with `axis`"
+        )
+
+
+def _shared_rotations(part: Raw, motions: MotionsOf) -> set[str] | None:
+    ends = [motions[end] & ROTATIONS for end in _ends(part) if end in motions]
+    return set.intersection(*ends) if ends else None
+
+
+def _gear(gear: Raw, at: At, motions: MotionsOf) -> Iterator[Fault]:
+    for place, end in enumerate(_ends(gear)):
+        if end == "ground":
+            yield Fault(pointer((*at, "between", place)), "a gear runs between two bodies")
+        rotations = motions.get(end, set()) & ROTATIONS
+        if end in motions and "axis" in gear:
+            if gear["axis"] in ROTATIONS and gear["axis"] not in rotations:
+                yield Fault(pointer((*at, "axis")), f"'{end}' doesn't turn in '{gear['axis']}'")
+        elif end in motions and len(rotations) != 1:
+            yield Fault(
+                pointer((*at, "between", place)),
+                f"'{end}' has {len(rotations)} rotations: say with `axis` which one meshes",
+            )
+
+
+def _beam(beam: Raw, at: At, _: MotionsOf) -> Iterator[Fault]:
+    for place, end in enumerate(_ends(beam)):
+        if end == "ground":
+            yield Fault(
+                pointer((*at, "between", place)),
+                "a beam needs a body at either end: hold a massless body there instead of ground",
+            )
+    up = beam.get("up")
+    if isinstance(up, list) and up and all(value == 0 for value in up):
+        yield Fault(pointer((*at, "up")), "a direction can't be zero")
+
+
+def _bearing(bearing: Raw, at: At, motions: MotionsOf) -> Iterator[Fault]:
+    axis = bearing.get("axis", "x")
+    lateral = {"x", "y", "z"} - {axis} if isinstance(axis, str) else set()
+    ends = [motions[end] for end in _ends(bearing) if end in motions]
+    if ends and not set.union(*ends) & lateral:
+        yield Fault(
+            pointer((*at, "between")), f"nothing moves across the axis {axis} of this bearing"
+        )
+
+
 _CHECKS: dict[str, Callable[[Raw, At, MotionsOf], Iterator[Fault]]] = {
     "spring": _spring,
     "damper": _damper,
     "pendulum": _pendulum,
     "link": _link,
+    "shaft": _shaft,
+    "gear": _gear,
+    "beam": _beam,
+    "bearing": _bearing,
 }
 
 

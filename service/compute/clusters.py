@@ -12,6 +12,7 @@ import numpy as np
 
 from service.compute.machine import Floats
 
+SAME = 1e-13  # relative: eigenvalues that differ by less are one root; mixing them costs no digits
 TIE = 1e-6  # lengths that differ by less are taken for equal, so that roundoff decides nothing
 
 
@@ -25,7 +26,7 @@ def settle(values: Floats, shapes: Floats, weight: Floats, slack: Floats) -> Flo
     slack : (m,) how far each eigenvalue may be off
     """
     settled = shapes.copy()
-    for first, last in _clusters(values, slack):
+    for first, last in clusters(values, slack):
         settled[:, first:last] = _settled_basis(shapes[:, first:last], weight)
     return settled * _signs(settled * weight[:, None])
 
@@ -38,10 +39,11 @@ def settle_space(shapes: Floats, weight: Floats) -> Floats:
     return settled * _signs(settled * weight[:, None])
 
 
-def _clusters(values: Floats, slack: Floats) -> list[tuple[int, int]]:
+def clusters(values: Floats, slack: Floats) -> list[tuple[int, int]]:
+    """First and one past the last place of each repeated root."""
     if len(values) < 2:
         return []
-    close = np.diff(values) <= np.maximum(1e-10 * np.abs(values[1:]), 2 * (slack[1:] + slack[:-1]))
+    close = np.diff(values) <= np.maximum(SAME * np.abs(values[1:]), 2 * (slack[1:] + slack[:-1]))
     if not close.any():
         return []
     edges = [0, *(np.flatnonzero(~close) + 1).tolist(), len(values)]

@@ -4,7 +4,7 @@ Axes are numbered 0 to 5 for x, y, z, rx, ry, rz. Ends of a part are indices of 
 ground.
 """
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, replace
 from typing import TypeAlias
 
 import numpy as np
@@ -36,18 +36,28 @@ class Unsound(ValueError):
 
 
 @dataclass(frozen=True, slots=True)
+class Spin:
+    """Turns about `axis` (0 to 2) at `ratio` times the speed of the machine's shaft."""
+
+    axis: int
+    ratio: float
+
+
+@dataclass(frozen=True, slots=True)
 class Body:
     """A rigid body with its centre of mass at `at` (m), `mass` (kg) and inertia tensor (kg·m²).
 
-    `inertia` is (xx, yy, zz, xy, yz, xz) about the centre of mass. `motions` are the axes in
-    which it can move, without those that are held.
+    `inertia` is (xx, yy, zz, xy, yz, xz) about the centre of mass. `able` are the axes in which it
+    can move, `motions` those of them that aren't held.
     """
 
     name: str
     at: Vector
     mass: float
-    inertia: tuple[float, float, float, float, float, float]
+    inertia: tuple[float, ...]
     motions: tuple[int, ...]
+    able: tuple[int, ...]
+    spin: Spin | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -78,10 +88,119 @@ class Link:
 
 
 @dataclass(frozen=True, slots=True)
+class Flywheel:
+    """Inertia (kg·m²) about the direction `about` that a connection adds to a body."""
+
+    name: str
+    body: int
+    about: Vector
+    inertia: float
+
+
+@dataclass(frozen=True, slots=True)
+class Gear:
+    """θ₂ = ratio·θ₁ for rotations given as (body, axis).
+
+    Exact where `stiffness` is None; else the spring k(r₂(θ₂ − ratio·θ₁))² acts, `radius` r₂ in m.
+    """
+
+    name: str
+    driver: tuple[int, int]
+    driven: tuple[int, int]
+    ratio: float
+    stiffness: float | None = None
+    radius: float = 1.0
+
+
+@dataclass(frozen=True, slots=True)
+class Section:
+    """Stiffness and mass of a beam per unit of length, in its own axes.
+
+    Attributes
+    ----------
+    EA : N; GJ, EIy, EIz : N·m²
+    GAy, GAz : shear stiffness in y and z, N (infinite without shear deformation)
+    mass : kg/m
+    polar : rotary inertia about the beam's axis, kg·m
+    Iy, Iz : rotary inertia about the section's y and z, kg·m (0 where neglected)
+    """
+
+    EA: float
+    GJ: float
+    EIy: float
+    EIz: float
+    GAy: float
+    GAz: float
+    mass: float
+    polar: float
+    Iy: float
+    Iz: float
+
+
+@dataclass(frozen=True, slots=True)
+class Beam:
+    """A beam between two bodies, cut into equal elements.
+
+    `axes` holds its own x (from the first end to the second), y and z as rows; `tension` is in N.
+    """
+
+    name: str
+    ends: tuple[int, int]
+    elements: int
+    axes: Rotation
+    section: Section
+    tension: float = 0.0
+    spin_ratio: float = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class Bearing:
+    """Coefficients in two directions across a shaft, constant or over its speed.
+
+    Attributes
+    ----------
+    directions : the two lateral directions
+    rpm : (p,) speeds, ascending
+    stiffness, damping : (p, 2, 2), N/m and N·s/m, not always symmetric
+    """
+
+    name: str
+    ends: tuple[int, int]
+    at: Vector
+    directions: tuple[Vector, Vector]
+    rpm: Floats
+    stiffness: Floats
+    damping: Floats
+
+    def coefficients(self, rpm: float) -> tuple[Floats, Floats]:
+        """(2, 2) stiffness and damping at `rpm`: linear in speed, constant outside the table."""
+        place = float(np.interp(rpm, self.rpm, np.arange(len(self.rpm))))
+        low = min(int(place), len(self.rpm) - 1)
+        high = min(low + 1, len(self.rpm) - 1)
+        share = place - low
+        K = (1.0 - share) * self.stiffness[low] + share * self.stiffness[high]
+        C = (1.0 - share) * self.damping[low] + share * self.damping[high]
+        return K, C
+
+    def elastic(self) -> "Bearing":
+        """The same bearing without damping and without cross-coupling that feeds energy in."""
+        symmetric = (self.stiffness + self.stiffness.transpose(0, 2, 1)) / 2
+        return replace(self, stiffness=symmetric, damping=np.zeros_like(self.damping))
+
+    def covers(self, rpm: float) -> bool:
+        """Whether the table reaches `rpm`; a constant set reaches everywhere."""
+        return len(self.rpm) == 1 or bool(self.rpm[0] <= rpm <= self.rpm[-1])
+
+
+@dataclass(frozen=True, slots=True)
 class Machine:
     """Bodies, and the parts between them."""
 
     bodies: tuple[Body, ...]
     springs: tuple[Spring, ...] = ()
     links: tuple[Link, ...] = ()
-    connection_names: tuple[str, ...] = field(default=())
+    gears: tuple[Gear, ...] = ()
+    flywheels: tuple[Flywheel, ...] = ()
+    beams: tuple[Beam, ...] = ()
+    bearings: tuple[Bearing, ...] = ()
+    connection_names: tuple[str, ...] = ()

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.linalg import lapack
 
-from service.compute.assembly import Assembly
+from service.compute.assembly import Assembly, Entries, Matrix
 from service.compute.machine import Floats, Integers
 from service.compute.pencil import Pencil
 
@@ -27,7 +27,7 @@ class Direction:
 
 
 def effective_masses(
-    M: Floats, pencil: Pencil, shapes: Floats, directions: tuple[list[int], Floats]
+    M: Matrix, pencil: Pencil, shapes: Floats, directions: tuple[list[int], Floats]
 ) -> list[Direction]:
     """Γ² of each mode, Γ = φᵀMr, r the rigid-body motion of all supports in one direction.
 
@@ -63,40 +63,44 @@ def support_motions(assembly: Assembly) -> tuple[list[int], Floats]:
     Returns the d axes and an (n, d) array.
     """
     axes = sorted(set(assembly.axes.tolist()))
-    arms = (assembly.places - centre_of_mass(assembly)[1])[assembly.owners]
     motions = (assembly.axes[:, None] == axes).astype(float)
+    if axes[-1] < 3:
+        return axes, motions
+    arms = (assembly.places - centre_of_mass(assembly, motions[:, 0]))[assembly.owners]
     for column, axis in enumerate(axes):
         if axis >= 3:
             ahead, behind = (axis - 2) % 3, (axis - 1) % 3
             for moving, arm, sign in ((ahead, behind, -1.0), (behind, ahead, 1.0)):
-                rows = assembly.axes == moving
-                motions[rows, column] = sign * arms[rows, arm]
+                if moving in axes:
+                    motions[:, column] += sign * motions[:, axes.index(moving)] * arms[:, arm]
     return axes, motions
 
 
-def centre_of_mass(assembly: Assembly) -> tuple[float, Floats]:
-    """Mass of what can move (kg) and its centre (3,) in m, from the translations.
-
-    Each body counts once, with the largest mass of its translations.
-    """
-    masses = np.zeros(len(assembly.places))
-    translation = assembly.axes < 3
-    np.maximum.at(masses, assembly.owners[translation], assembly.M.diagonal()[translation])
-    total = float(masses.sum())
-    if total == 0.0:
-        return 0.0, assembly.places.mean(axis=0)
-    return total, masses @ assembly.places / total
+def centre_of_mass(assembly: Assembly, along: Floats) -> Floats:
+    """(3,) centre in m of what moves, weighed by the (n,) translation `along` one axis."""
+    weight = (assembly.M @ along) * along
+    total = float(weight.sum())
+    if assembly.axes.min() >= 3 or total <= 0.0:
+        return np.asarray(assembly.places.mean(axis=0))
+    return np.asarray(weight @ assembly.places[assembly.owners] / total)
 
 
-def strain_shares(assembly: Assembly, shapes: Floats) -> Floats:
+def strain_shares(assembly: Assembly, shapes: Floats, rpm: float = 0.0) -> Floats:
     """(connections, m) share of each connection in the strain energy of the (n, m) shapes."""
     energy = assembly.k[:, None] * (assembly.J @ shapes) ** 2
-    return _shares(energy, assembly.springs_of, len(assembly.connection_names))
+    owners = assembly.springs_of
+    for bearing, rows in assembly.bearings:
+        stiffness, _ = bearing.coefficients(rpm)
+        moved = rows @ shapes
+        energy = np.vstack([energy, (moved * (stiffness @ moved)).sum(axis=0)])
+        owners = np.append(owners, assembly.connection_names.index(bearing.name))
+    return _shares(energy, owners, len(assembly.connection_names))
 
 
-def kinetic_shares(M: Floats, owners: Integers, bodies: int, shapes: Floats) -> Floats:
-    """(bodies, m) share of each body in the kinetic energy of the (n, m) shapes."""
-    return _shares(shapes * (M @ shapes), owners, bodies)
+def kinetic_shares(masses: Entries, carriers: int, shapes: Floats) -> Floats:
+    """(carriers, m) share of each part that has mass in the kinetic energy of the (n, m) shapes."""
+    energy = masses.value[:, None] * shapes[masses.row] * shapes[masses.column]
+    return _shares(energy, masses.owner, carriers)
 
 
 def _shares(energy: Floats, owners: Integers, parts: int) -> Floats:

@@ -5,8 +5,10 @@ from the others, which is no approximation (static condensation, Guyan 1965, whe
 """
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.linalg import lapack
 
 from service.compute.assembly import Assembly
@@ -28,6 +30,7 @@ class Pencil:
     R : (n, r) all motions from the coordinates, or None for the identity
     J : (m, t) deformation rows in the t motions left by the ties, or None where not known
     carry : (r, t) P₁ᵀM, by which the coordinates of a motion are M⁻¹P₁ᵀMq, or None for M
+    empty : (t, z) basis of the motions without inertia, or None where there is none
     massless : names of motions that were condensed out
     ties : how rigid ties were eliminated
     """
@@ -40,6 +43,7 @@ class Pencil:
     R: Floats | None
     J: Floats | None
     carry: Floats | None
+    empty: Floats | None
     massless: tuple[str, ...]
     ties: Ties
 
@@ -52,9 +56,29 @@ class Pencil:
         """All n motions from (r, …) coordinates."""
         return coordinates if self.R is None else self.R @ coordinates
 
+    def tied(self, motions: NDArray[Any]) -> NDArray[Any]:
+        """All n motions from the t that the ties leave."""
+        return motions if self.ties.T is None else self.ties.T @ motions
 
-def pencil_of(assembly: Assembly) -> Pencil:
-    """The pencil of an assembled machine.
+
+def rows_at(assembly: Assembly, rpm: float) -> tuple[Floats, Floats]:
+    """Deformation rows (m, n) and stiffnesses (m,) with the bearings as they are at `rpm`.
+
+    A bearing comes in by the symmetric part of its stiffness, along its principal directions. A
+    damper alone has no row here: it brings nothing back.
+    """
+    acting = assembly.k != 0.0
+    J, k = [assembly.J[acting]], [assembly.k[acting]]
+    for bearing, rows in assembly.bearings:
+        stiffness, _ = bearing.coefficients(rpm)
+        values, vectors = np.linalg.eigh((stiffness + stiffness.T) / 2)
+        J.append((vectors.T @ rows)[values != 0.0])
+        k.append(values[values != 0.0])
+    return (np.vstack(J), np.concatenate(k)) if len(J) > 1 else (J[0], k[0])
+
+
+def pencil_of(assembly: Assembly, rpm: float = 0.0) -> Pencil:
+    """The pencil of an assembled machine, its bearings as they are at `rpm`.
 
     Raises
     ------
@@ -64,11 +88,11 @@ def pencil_of(assembly: Assembly) -> Pencil:
     if not assembly.names:
         raise Unsound("nothing can move: every motion of every body is held", "bodies")
     ties = eliminate(assembly.constraints, len(assembly.names))
-    J, M = assembly.J, assembly.M
+    J, k = rows_at(assembly, rpm)
+    M = assembly.M
     if ties.T is not None:
         J, M = J @ ties.T, ties.T.T @ M @ ties.T
-    k = assembly.k[:, None]
-    J_size = np.abs(J)
+    J_size, k = np.abs(J), k[:, None]
     return _condense(
         J.T @ (k * J), M, J_size.T @ (np.abs(k) * J_size), np.abs(M), J, ties, assembly.names
     )
@@ -98,7 +122,7 @@ def _condense(
     kept = [names[number] for number in ties.kept]
     L = _cholesky(M)
     if L is not None:
-        return Pencil(K, M, L, K_size, M_size, ties.T, J, None, (), ties)
+        return Pencil(K, M, L, K_size, M_size, ties.T, J, None, None, (), ties)
     P1, P0 = _with_and_without_mass(M, kept)
     if not P1.shape[1]:
         raise Unsound("nothing that can move has mass or inertia", "bodies")
@@ -117,6 +141,7 @@ def _condense(
         R if ties.T is None else ties.T @ R,
         J,
         P1.T @ M,
+        P0,
         tuple(kept[row] for row in np.flatnonzero(np.abs(P0).max(axis=1) > 0.5)),
         ties,
     )

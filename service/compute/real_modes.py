@@ -10,7 +10,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy.linalg import eigh, lapack
 
-from service.compute.clusters import settle, settle_space
+from service.compute.clusters import clusters, settle, settle_space
 from service.compute.inertia_count import count_below
 from service.compute.machine import Floats
 from service.compute.pencil import EPS, Pencil
@@ -184,18 +184,23 @@ def _checked(pencil: Pencil, values: Floats, shapes: Floats, free: Floats, metho
     MX, KX = pencil.M @ shapes, pencil.K @ shapes
     norm = np.sqrt((shapes * MX).sum(axis=0))
     shapes, MX, KX = shapes / norm, MX / norm, KX / norm
+    roots = clusters(values, slack)
     values = np.where(is_rigid, 0.0, (shapes * KX).sum(axis=0))
     residual = KX - MX * values
-    bounds = np.where(is_rigid, 0.0, _bounds(pencil, residual, shapes, values))
+    for first, last in roots:
+        values[first:last].sort()  # so that roundoff doesn't reorder what has been settled
+    exact = is_rigid & (pencil.J is not None)  # explicit matrices are singular up to roundoff only
+    bounds = np.where(exact, 0.0, _bounds(pencil, residual, shapes, values))
     scale = np.linalg.norm(KX, axis=0) + np.abs(values) * np.linalg.norm(MX, axis=0)
-    relative = np.linalg.norm(residual, axis=0)[~is_rigid] / scale[~is_rigid]
+    strained = ~is_rigid & (scale > 0.0)
+    relative = np.linalg.norm(residual, axis=0)[strained] / scale[strained]
     cross = shapes.T @ MX
     np.fill_diagonal(cross, 0.0)
     order = np.argsort(values, kind="stable")
     return Modes(
         values=values[order],
         shapes=shapes[:, order],
-        bounds=bounds[order],
+        bounds=_together(values[order], bounds[order]),
         rigid=is_rigid[order],
         found=0,
         below=0.0,
@@ -221,6 +226,20 @@ def _bounds(pencil: Pencil, residual: Floats, shapes: Floats, values: Floats) ->
         np.abs(inverse) @ roundoff, axis=0
     )
     return bounds
+
+
+def _together(values: Floats, bounds: Floats) -> Floats:
+    """Bounds that hold mode by mode: those that overlap are taken together, as one block.
+
+    The k values of a block lie within ‖R‖ of k eigenvalues, in order (Kahan 1967; Parlett 1980,
+    §11.5), while the residual of one vector alone only says that some eigenvalue is near.
+    """
+    apart = values[1:] - bounds[1:] > np.maximum.accumulate(values + bounds)[:-1]
+    if apart.all():
+        return bounds
+    block = np.concatenate([[0], np.cumsum(apart)])
+    together: Floats = np.sqrt(np.bincount(block, bounds**2))[block]
+    return together
 
 
 def _row_terms(A: Floats) -> int:

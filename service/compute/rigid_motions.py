@@ -17,9 +17,10 @@ def rigid_motions(pencil: Pencil) -> Floats:
     null: Floats = _of_rows(pencil.J) if pencil.J is not None else _of_stiffness(pencil.K)
     if not null.shape[1]:
         return null[: pencil.size]
-    if pencil.carry is not None:
-        null = np.linalg.solve(pencil.M, pencil.carry @ null)
-    return _orthonormal(null, pencil)
+    if pencil.carry is None:
+        return _orthonormal(null, pencil)
+    carried = np.asarray(np.linalg.solve(pencil.M, pencil.carry @ null), dtype=float)
+    return _orthonormal(carried, pencil)
 
 
 def _of_rows(J: Floats) -> Floats:

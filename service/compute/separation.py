@@ -40,12 +40,17 @@ class Margin:
     required: float
     side: str
 
+    @property
+    def is_kept(self) -> bool:
+        """Whether the mode lies outside the band, by what is required up to roundoff."""
+        return self.side != "inside" and self.margin >= self.required - NEAR
+
 
 def margin(frequency: float, low: float, high: float, required: Required) -> Margin:
     """Distance of `frequency` from the nearer edge of [low, high] over that edge (all in Hz)."""
-    if frequency > high:
+    if frequency > high * (1.0 + NEAR):
         return Margin((frequency - high) / high, required.above, "above")
-    if frequency < low:
+    if frequency < low * (1.0 - NEAR):
         return Margin((low - frequency) / low, required.below, "below")
     nearer_top = high - frequency <= frequency - low
     return Margin(0.0, required.above if nearer_top else required.below, "inside")

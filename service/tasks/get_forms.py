@@ -2,6 +2,7 @@
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from math import isfinite
 from typing import Any
 
 from schemas.faults import Fault, Invalid, pointer
@@ -43,6 +44,9 @@ class _Query:
                 values.append(float(text))
             except ValueError:
                 self.fault(name, f"'{text[:32]}' isn't a number")
+            else:
+                if not isfinite(values[-1]):
+                    self.fault(name, "must be a finite number")
         if name in self.query and not values and not self.faults:
             self.fault(name, "a number is missing")
         return values
@@ -63,6 +67,7 @@ def _modes(query: Mapping[str, str]) -> dict[str, Any]:
     read = _Query(query)
     question: dict[str, Any] = {}
     count, below = read.number("count"), read.number("below_hz")
+    read.check()
     if count is not None:
         question["count"] = int(count) if count == int(count) else count
     if below is not None:

@@ -62,13 +62,16 @@ def frequency_bounds(found: Modes) -> list[float]:
     """Bounds on each frequency in Hz from those on the eigenvalues.
 
     √v − √(v − b) = b/(√v + √(v − b)) is the wider side; nothing cancels when it is written so.
+    What can't be told from 0 is given as 0 Hz, and lies within √(v + b) of that.
     """
     values = np.abs(found.values)
     bounds = np.minimum(found.bounds, values)
     roots = np.sqrt(values) + np.sqrt(values - bounds)
     from_value = bounds / np.where(roots > 0.0, roots, 1.0)
     above = np.sqrt(values + found.bounds) - np.sqrt(values)
-    result: list[float] = (np.maximum(from_value, above) / (2 * pi)).tolist()
+    from_zero = np.where(values <= found.bounds, np.sqrt(values + found.bounds), 0.0)
+    widest = np.maximum(from_zero, np.maximum(from_value, above))
+    result: list[float] = (widest / (2 * pi)).tolist()
     return result
 
 
@@ -130,7 +133,7 @@ def _effective_mass(masses: list[Direction], index: int) -> dict[str, dict[str, 
 
 def energy_shares(analysed: Analysed, shapes: Floats) -> tuple[Floats, Floats]:
     """Kinetic shares per body and strain shares per connection, (parts, modes)."""
-    kinetic = kinetic_shares(analysed.M, analysed.owners, len(analysed.bodies), shapes)
+    kinetic = kinetic_shares(analysed.masses, len(analysed.carriers), shapes)
     if analysed.assembly is None:
         return kinetic, np.zeros((0, shapes.shape[1]))
     return kinetic, strain_shares(analysed.assembly, shapes)
@@ -172,7 +175,7 @@ def _named_shares(
     names = analysed.assembly.connection_names if analysed.assembly else ()
     return [
         ([] if kind == "rigid-body" else _largest("strain", names, strained))
-        + _largest("kinetic", analysed.bodies, moving)
+        + _largest("kinetic", analysed.carriers, moving)
         for kind, strained, moving in zip(
             kind_list, strain.T.tolist(), kinetic.T.tolist(), strict=True
         )

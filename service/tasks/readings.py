@@ -25,11 +25,10 @@ def percent(share: float, digits: int = 1) -> str:
 
 def two_percents(first: float, second: float) -> tuple[str, str]:
     """Two fractions, with as many digits as tell them apart."""
-    for digits in range(1, 9):
-        pair = percent(first, digits), percent(second, digits)
-        if first == second or pair[0] != pair[1]:
-            break
-    return pair
+    digits = 1
+    while first != second and digits < 9 and percent(first, digits) == percent(second, digits):
+        digits += 1
+    return percent(first, digits), percent(second, digits)
 
 
 def listed(parts: list[str]) -> str:
@@ -56,7 +55,7 @@ def mode_readings(
     owners, axes = analysed.owners.tolist(), analysed.axes.tolist()
     return [
         _mode_reading(
-            frequency, kind, part, _what_moves(analysed.bodies, owners, axes, energy, motion)
+            frequency, kind, part, _what_moves(analysed.points, owners, axes, energy, motion)
         )
         for frequency, kind, part, energy, motion in zip(
             frequencies, kinds, shares, energies, motions, strict=True

@@ -174,7 +174,7 @@ def _finding(
     elif kept.side == "inside":
         verdict = "coincident"
     else:
-        verdict = "clear" if kept.margin >= kept.required else "short"
+        verdict = "clear" if kept.is_kept else "short"
     rpm = coincidence_rpm(mode.frequency, excitation)
     finding: dict[str, Any] = {
         "mode": mode.number,

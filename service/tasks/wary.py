@@ -1,7 +1,8 @@
 """What a careful engineer would question: the warnings of an answer."""
 
+from schemas.connections import Damper, Spring
 from schemas.modes import ModesQuestion
-from schemas.system import AnySystem, BodiesSystem, Damper, InertiaTensor, Spring
+from schemas.system import AnySystem, BodiesSystem, InertiaTensor, MatricesSystem
 from service.compute.real_modes import Modes
 from service.tasks.machines import Analysed
 
@@ -10,7 +11,9 @@ def system_warnings(system: AnySystem, analysed: Analysed, found: Modes) -> list
     """On the system itself, of which modes were found."""
     warnings = geometry_warnings(system, analysed, int(found.rigid.sum()))
     assembly = analysed.assembly
-    damped = isinstance(system, BodiesSystem) and system.damping is not None
+    damped = system.damping is not None or (
+        isinstance(system, MatricesSystem) and system.structural is not None
+    )
     if damped or (assembly is not None and (assembly.c.any() or assembly.h.any())):
         warnings.append("the system's damping isn't used: these are its undamped modes.")
     return warnings
