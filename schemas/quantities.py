@@ -44,6 +44,12 @@ SI_UNITS = {
     "area": "m**2",
     "second moment of area": "m**4",
     "force": "N",
+    "moment": "N*m",
+    "angle": "rad",
+    "velocity": "m/s",
+    "angular velocity": "rad/s",
+    "angular acceleration": "rad/s**2",
+    "mass eccentricity": "kg*m",
 }
 SHOWN_UNITS = {
     "mass": "kg",
@@ -64,6 +70,12 @@ SHOWN_UNITS = {
     "area": "m²",
     "second moment of area": "m⁴",
     "force": "N",
+    "moment": "N·m",
+    "angle": "rad",
+    "velocity": "m/s",
+    "angular velocity": "rad/s",
+    "angular acceleration": "rad/s²",
+    "mass eccentricity": "kg·m",
 }
 
 _NUMBER_AND_UNIT = re.compile(
@@ -245,6 +257,7 @@ class Quantity:
 
 
 Mass = Annotated[float, Quantity("mass", "not negative")]
+PositiveMass = Annotated[float, Quantity("mass", "positive")]
 Length = Annotated[float, Quantity("length")]
 PositiveLength = Annotated[float, Quantity("length", "positive")]
 NonNegativeLength = Annotated[float, Quantity("length", "not negative")]
@@ -263,6 +276,12 @@ Damping = Annotated[float, Quantity("damping", "not negative")]
 SignedDamping = Annotated[float, Quantity("damping")]
 RotationalDamping = Annotated[float, Quantity("rotational damping", "not negative")]
 AnyDamping = Annotated[float, Quantity("damping", "not negative", "rotational damping")]
+Moment = Annotated[float, Quantity("moment")]
+AnyForce = Annotated[float, Quantity("force", or_dimension="moment")]
+AnyDisplacement = Annotated[float, Quantity("length", or_dimension="angle")]
+AnyVelocity = Annotated[float, Quantity("velocity", or_dimension="angular velocity")]
+AnyAcceleration = Annotated[float, Quantity("acceleration", or_dimension="angular acceleration")]
+MassEccentricity = Annotated[float, Quantity("mass eccentricity", "positive")]
 Pressure = Annotated[float, Quantity("pressure", "positive")]
 Density = Annotated[float, Quantity("density", "positive")]
 Ratio = Annotated[float, Quantity("ratio", "not negative")]
@@ -270,6 +289,7 @@ SignedRatio = Annotated[float, Quantity("ratio")]
 PositiveRatio = Annotated[float, Quantity("ratio", "positive")]
 Rate = Annotated[float, Quantity("rate", "not negative")]
 Time = Annotated[float, Quantity("time", "not negative")]
+PositiveTime = Annotated[float, Quantity("time", "positive")]
 Frequency = Annotated[float, Quantity("frequency", "positive")]
 Speed = Annotated[float, Quantity("speed", "not negative")]
 PositiveSpeed = Annotated[float, Quantity("speed", "positive")]

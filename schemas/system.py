@@ -20,6 +20,7 @@ from schemas.quantities import (
     Point,
     Rate,
     Ratio,
+    SignedRatio,
     Time,
 )
 
@@ -63,6 +64,15 @@ TensorOrNumber = Annotated[
 ]
 
 
+class Spin(Strict):
+    """How a body or a beam turns with the machine's shaft."""
+
+    axis: Literal["x", "y", "z"]
+    """The axis that it turns about (no unit)."""
+    ratio: SignedRatio = 1.0
+    """Its speed over the speed of the shaft, negative for the other way round (no unit)."""
+
+
 class Body(Strict):
     """A rigid body, or with no mass a point where connections meet."""
 
@@ -79,6 +89,8 @@ class Body(Strict):
     """The motions it can make (no unit); the system's `motions` where absent."""
     held: Motions = []
     """Those of its motions that are fixed to ground (no unit)."""
+    spin: Spin | None = None
+    """How it turns with the machine's shaft; gives gyroscopic terms."""
 
 
 class ModalDamping(Strict):

@@ -17,6 +17,7 @@ from schemas.quantities import (
     Pressure,
     Ratio,
     SecondMoment,
+    SignedRatio,
 )
 
 
@@ -107,6 +108,9 @@ class Beam(Strict):
     """Without or with shear deformation and rotary inertia (no unit)."""
     axial_force: Force = 0.0
     """Static axial force, N; tension is positive."""
+    spin_ratio: SignedRatio = 0.0
+    """The section turns about the beam's axis at this times the speed of the shaft (no unit); gives
+    gyroscopic terms."""
     up: Point | None = None
     """A direction in whose plane with the beam the section's y lies; the space's y where absent,
     −x for a beam along y."""

@@ -5,13 +5,14 @@ ground.
 """
 
 from dataclasses import dataclass, replace
-from typing import TypeAlias
+from typing import Any, TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
 
 Floats: TypeAlias = NDArray[np.float64]
 Integers: TypeAlias = NDArray[np.intp]
+Shapes: TypeAlias = NDArray[np.inexact[Any]]  # real, or complex where damped
 Vector: TypeAlias = tuple[float, float, float]
 Rotation: TypeAlias = tuple[Vector, Vector, Vector]
 

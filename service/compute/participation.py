@@ -6,7 +6,7 @@ import numpy as np
 from scipy.linalg import lapack
 
 from service.compute.assembly import Assembly, Entries, Matrix
-from service.compute.machine import Floats, Integers
+from service.compute.machine import Floats, Integers, Shapes
 from service.compute.pencil import Pencil
 
 
@@ -27,7 +27,7 @@ class Direction:
 
 
 def effective_masses(
-    M: Matrix, pencil: Pencil, shapes: Floats, directions: tuple[list[int], Floats]
+    M: Matrix, pencil: Pencil, shapes: Shapes, directions: tuple[list[int], Floats]
 ) -> list[Direction]:
     """Γ² of each mode, Γ = φᵀMr, r the rigid-body motion of all supports in one direction.
 
@@ -48,7 +48,7 @@ def effective_masses(
     reduced = pushed if pencil.R is None else pencil.R.T @ pushed
     solved, _ = lapack.dtrtrs(pencil.L, reduced, lower=1)
     totals = (solved**2).sum(axis=0).tolist()
-    effective = ((shapes.T @ pushed) ** 2).T.tolist()
+    effective = (np.abs(shapes.T @ pushed) ** 2).T.tolist()
     return [
         Direction(axis, total, part)
         for axis, total, part in zip(axes, totals, effective, strict=True)
@@ -85,21 +85,21 @@ def centre_of_mass(assembly: Assembly, along: Floats) -> Floats:
     return np.asarray(weight @ assembly.places[assembly.owners] / total)
 
 
-def strain_shares(assembly: Assembly, shapes: Floats, rpm: float = 0.0) -> Floats:
+def strain_shares(assembly: Assembly, shapes: Shapes, rpm: float = 0.0) -> Floats:
     """(connections, m) share of each connection in the strain energy of the (n, m) shapes."""
-    energy = assembly.k[:, None] * (assembly.J @ shapes) ** 2
+    energy = assembly.k[:, None] * np.abs(assembly.J @ shapes) ** 2
     owners = assembly.springs_of
     for bearing, rows in assembly.bearings:
         stiffness, _ = bearing.coefficients(rpm)
         moved = rows @ shapes
-        energy = np.vstack([energy, (moved * (stiffness @ moved)).sum(axis=0)])
+        energy = np.vstack([energy, (moved.conj() * (stiffness @ moved)).sum(axis=0).real])
         owners = np.append(owners, assembly.connection_names.index(bearing.name))
     return _shares(energy, owners, len(assembly.connection_names))
 
 
-def kinetic_shares(masses: Entries, carriers: int, shapes: Floats) -> Floats:
+def kinetic_shares(masses: Entries, carriers: int, shapes: Shapes) -> Floats:
     """(carriers, m) share of each part that has mass in the kinetic energy of the (n, m) shapes."""
-    energy = masses.value[:, None] * shapes[masses.row] * shapes[masses.column]
+    energy = masses.value[:, None] * (shapes[masses.row].conj() * shapes[masses.column]).real
     return _shares(energy, masses.owner, carriers)
 
 
@@ -111,7 +111,7 @@ def _shares(energy: Floats, owners: Integers, parts: int) -> Floats:
     return sums / np.where(total > 0.0, total, 1.0)
 
 
-def mobility_shares(pencil: Pencil, shapes: Floats, places: list[int]) -> Floats:
+def mobility_shares(pencil: Pencil, shapes: Shapes, places: list[int]) -> Floats:
     """(places, m) share of each mode in the driving-point mobility at motions of the machine.
 
     Over all modes Σφᵢ² = (RM⁻¹Rᵀ)ᵢᵢ, so φᵢ² over that lies between 0 and 1 and has no unit.

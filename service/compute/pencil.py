@@ -156,6 +156,8 @@ def _cholesky(M: Floats) -> Floats | None:
     diagonal = M.diagonal()
     if not diagonal.size or diagonal.min() <= 0.0:
         return None
+    if np.count_nonzero(M) == len(M):
+        return np.diag(np.sqrt(diagonal))
     L: Floats
     L, info = lapack.dpotrf(M, lower=1, clean=1)
     if info or (L.diagonal() ** 2 <= 8 * len(M) * EPS * diagonal).any():

@@ -221,6 +221,10 @@ def _bounds(pencil: Pencil, residual: Floats, shapes: Floats, values: Floats) ->
     terms = max(_row_terms(pencil.K_size), _row_terms(pencil.M_size)) + 8
     size = np.abs(shapes)
     roundoff = terms * EPS * (pencil.K_size @ size + (pencil.M_size @ size) * np.abs(values))
+    if np.count_nonzero(pencil.L) == pencil.size:
+        both = np.stack([residual, roundoff]) / pencil.L.diagonal()[:, None]
+        alone: Floats = np.linalg.norm(both, axis=1).sum(axis=0)
+        return alone
     inverse, _ = lapack.dtrtri(pencil.L, lower=1)
     bounds: Floats = np.linalg.norm(inverse @ residual, axis=0) + np.linalg.norm(
         np.abs(inverse) @ roundoff, axis=0

@@ -57,8 +57,8 @@ def degrees_of_freedom(system: AnySystem) -> int:
     return own + sum(inner)
 
 
-def analyse(system: AnySystem) -> Analysed:
-    """Assemble and reduce a system.
+def analyse(system: AnySystem, rpm: float = 0.0) -> Analysed:
+    """Assemble and reduce a system, its bearings as they are at `rpm`.
 
     Raises
     ------
@@ -67,13 +67,13 @@ def analyse(system: AnySystem) -> Analysed:
     """
     try:
         if isinstance(system, BodiesSystem):
-            return _of_bodies(system)
+            return _of_bodies(system, rpm)
         return _of_matrices(system)
     except m.Unsound as fault:
         raise Invalid([Fault(_place(system, fault.part), fault.detail)]) from None
 
 
-def _of_bodies(system: BodiesSystem) -> Analysed:
+def _of_bodies(system: BodiesSystem, rpm: float) -> Analysed:
     assembly = assemble(machine_of(system))
     return Analysed(
         assembly.names,
@@ -83,7 +83,7 @@ def _of_bodies(system: BodiesSystem) -> Analysed:
         assembly.M,
         assembly.masses,
         assembly.carriers,
-        pencil_of(assembly),
+        pencil_of(assembly, rpm),
         support_motions(assembly),
         assembly,
     )

@@ -12,6 +12,7 @@ from schemas.matrix import EntryList, MatrixMarket
 from service.compute.machine import Floats
 
 SYMMETRIC_WITHIN = 1e-9  # of the larger of the two entries: what printing and reading may lose
+NOTHING = 1e-14  # of the diagonal: what roundoff leaves of an entry that is zero
 LARGEST = 1e30
 Posted = list[list[float]] | EntryList | MatrixMarket
 
@@ -122,8 +123,10 @@ def symmetric_part(
     """A with both triangles averaged; a fault names the entry that is off the most."""
     difference = abs(A - A.T)
     over = (difference - SYMMETRIC_WITHIN * abs(A).maximum(abs(A.T))).tocoo()
-    if over.nnz and over.data.max() > 0.0:
-        worst = int(over.data.argmax())
+    diagonal = np.sqrt(np.abs(A.diagonal()))
+    excess = over.data - NOTHING * diagonal[over.row] * diagonal[over.col]
+    if over.nnz and excess.max() > 0.0:
+        worst = int(excess.argmax())
         row, column = int(over.row[worst]), int(over.col[worst])
         where = (field, row, column) if isinstance(posted, list) else (field,)
         faults.append(

@@ -8,7 +8,7 @@ import numpy as np
 from schemas.faults import Invalid
 from schemas.modes import ModesQuestion
 from schemas.system import AnySystem
-from service.compute.machine import AXES, Floats
+from service.compute.machine import AXES, Floats, Shapes
 from service.compute.participation import (
     Direction,
     effective_masses,
@@ -36,6 +36,10 @@ def modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]:
         The system can't be computed; pointers start at the question.
     """
     try:
+        if question.damped or question.at_rpm is not None:
+            from service.tasks.damped import answer_damped
+
+            return answer_damped(system, question)
         analysed = analyse(system)
     except Invalid as fault:
         raise fault.under("/system") from None
@@ -95,17 +99,17 @@ def kinds(found: Modes) -> list[str]:
 def mode_list(analysed: Analysed, found: Modes, scale: str) -> list[dict[str, Any]]:
     """The modes as the contract writes them."""
     shapes = analysed.pencil.full(found.shapes)
-    masses = effective_masses(analysed.M, analysed.pencil, shapes, analysed.directions)
+    masses = masses_of(analysed, shapes)
     kinetic, strain = energy_shares(analysed, shapes)
     kind_list, bounds = kinds(found), frequency_bounds(found)
     frequencies = [
         _frequencies(value, kind)
         for value, kind in zip(found.values.tolist(), kind_list, strict=True)
     ]
-    shares = _named_shares(analysed, kinetic, strain, kind_list)
+    shares = named_shares(analysed, kinetic, strain, kind_list)
     hz = [float(frequency["frequency_hz"] or 0.0) for frequency in frequencies]
     readings = mode_readings(analysed, shapes, hz, kind_list, shares)
-    shown = _scaled(shapes, scale).T.tolist()
+    shown = scaled(shapes, scale).T.tolist()
     return [
         {
             "number": index + 1,
@@ -113,7 +117,7 @@ def mode_list(analysed: Analysed, found: Modes, scale: str) -> list[dict[str, An
             **frequencies[index],
             "frequency_bound_hz": bounds[index],
             "shape": shown[index],
-            "effective_mass": _effective_mass(masses, index),
+            "effective_mass": effective_mass(masses, index),
             "energy": shares[index],
             "reading": readings[index],
         }
@@ -121,7 +125,12 @@ def mode_list(analysed: Analysed, found: Modes, scale: str) -> list[dict[str, An
     ]
 
 
-def _effective_mass(masses: list[Direction], index: int) -> dict[str, dict[str, float]]:
+def masses_of(analysed: Analysed, shapes: Shapes) -> list[Direction]:
+    """Effective masses of the (n, m) shapes in every direction."""
+    return effective_masses(analysed.M, analysed.pencil, shapes, analysed.directions)
+
+
+def effective_mass(masses: list[Direction], index: int) -> dict[str, dict[str, float]]:
     return {
         AXES[part.axis]: {
             "kg" if part.axis < 3 else "kg_m2": part.effective[index],
@@ -131,12 +140,12 @@ def _effective_mass(masses: list[Direction], index: int) -> dict[str, dict[str, 
     }
 
 
-def energy_shares(analysed: Analysed, shapes: Floats) -> tuple[Floats, Floats]:
+def energy_shares(analysed: Analysed, shapes: Shapes, rpm: float = 0.0) -> tuple[Floats, Floats]:
     """Kinetic shares per body and strain shares per connection, (parts, modes)."""
     kinetic = kinetic_shares(analysed.masses, len(analysed.carriers), shapes)
     if analysed.assembly is None:
         return kinetic, np.zeros((0, shapes.shape[1]))
-    return kinetic, strain_shares(analysed.assembly, shapes)
+    return kinetic, strain_shares(analysed.assembly, shapes, rpm)
 
 
 def _frequencies(value: float, kind: str) -> dict[str, float | None]:
@@ -160,15 +169,15 @@ def _frequencies(value: float, kind: str) -> dict[str, float | None]:
     return still
 
 
-def _scaled(shapes: Floats, scale: str) -> Floats:
+def scaled(shapes: Shapes, scale: str) -> Shapes:
     if scale == "mass":
         return shapes
     largest = np.abs(shapes).argmax(axis=0)
-    scaled: Floats = shapes / shapes[largest, np.arange(shapes.shape[1])]
+    scaled: Shapes = shapes / shapes[largest, np.arange(shapes.shape[1])]
     return scaled
 
 
-def _named_shares(
+def named_shares(
     analysed: Analysed, kinetic: Floats, strain: Floats, kind_list: list[str]
 ) -> list[list[dict[str, Any]]]:
     """Per mode the shares worth naming, strain first; a rigid-body motion strains nothing."""

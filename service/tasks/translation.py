@@ -120,6 +120,7 @@ def _body(body: Body) -> m.Body:
         _tensor(body),
         tuple(NUMBER_OF[motion] for motion in able if motion not in body.held),
         tuple(NUMBER_OF[motion] for motion in able),
+        None if body.spin is None else m.Spin("xyz".index(body.spin.axis), body.spin.ratio),
     )
 
 
@@ -319,6 +320,7 @@ def _beam(beam: Beam, system: BodiesSystem, places: dict[str, int]) -> m.Beam:
         beams.own_axes(first, second, up),
         _beam_section(beam),
         beam.axial_force,
+        beam.spin_ratio,
     )
 
 
