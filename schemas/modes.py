@@ -5,7 +5,7 @@ from typing import Annotated, Literal, Self
 from pydantic import Field, model_validator
 
 from schemas.base import Answer, fault
-from schemas.quantities import Frequency, Motion, Speed
+from schemas.quantities import DegreeOfFreedom, Frequency, Motion, Speed
 from schemas.question import Question
 
 Count = Annotated[int, Field(ge=1, le=2000)]
@@ -26,6 +26,9 @@ class ModesQuestion(Question):
     rest."""
     shape_scale: Literal["mass", "largest"] = "mass"
     """"mass": φᵀMφ = 1; "largest": the largest entry of each shape is 1 (no unit)."""
+
+    shapes_of: Annotated[list[DegreeOfFreedom], Field(min_length=1, max_length=1000)] | None = None
+    """Degrees of freedom whose part of the shapes comes back, BODY/MOTION; all where absent."""
 
     @model_validator(mode="after")
     def _count_or_limit(self) -> Self:

@@ -7,11 +7,14 @@ rows tie already.
 """
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
+from scipy.sparse import csr_array
 
-from service.compute.machine import Floats, Integers
+from service.compute.machine import Integers
 
+DENSE_UP_TO = 1500  # motions
 NEGLIGIBLE = 1e-10  # of the largest entry of a row: what is left of it by roundoff
 
 
@@ -21,13 +24,14 @@ class Ties:
 
     Attributes
     ----------
-    T : (n, r) every motion from the r independent ones, or None where nothing is tied
+    T : (n, r) every motion from the r independent ones, or None where nothing is tied; sparse
+        above `DENSE_UP_TO` motions
     kept : (r,) which motions are the independent ones
     redundant : names of ties of which some row says nothing new
     locking : names of ties that hold a motion to zero which is otherwise free
     """
 
-    T: Floats | None
+    T: Any
     kept: Integers
     redundant: tuple[str, ...]
     locking: tuple[str, ...]
@@ -52,11 +56,12 @@ def eliminate(constraints: tuple[tuple[str, list[tuple[int, float]]], ...], size
         _solve(left, dependent)
     kept = [column for column in range(size) if column not in dependent]
     place = {column: number for number, column in enumerate(kept)}
-    T = np.zeros((size, len(kept)))
-    T[kept, range(len(kept))] = 1.0
+    entries = [(column, number, 1.0) for number, column in enumerate(kept)]
     for column, combination in dependent.items():
-        for other, value in combination.items():
-            T[column, place[other]] = value
+        entries += [(column, place[other], value) for other, value in combination.items()]
+    rows, columns, values = zip(*entries, strict=True) if entries else ((), (), ())
+    sparse = csr_array((values, (rows, columns)), shape=(size, len(kept)))
+    T = sparse.toarray() if size <= DENSE_UP_TO else sparse
     return Ties(
         T, np.array(kept, dtype=int), tuple(dict.fromkeys(redundant)), tuple(dict.fromkeys(locking))
     )

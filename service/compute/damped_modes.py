@@ -14,7 +14,7 @@ own quadratic equation and no eigenproblem is solved.
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,7 +22,7 @@ from numpy.typing import NDArray
 from service.compute.machine import Floats
 from service.compute.pencil import EPS, Pencil
 
-Complexes = NDArray[np.complex128]
+Complexes: TypeAlias = NDArray[Any]  # complex128; float64 where nothing is complex
 PROPORTIONAL = 1e-13  # of the diagonal: cross terms below this are roundoff
 NEARLY_DEFECTIVE = 1e6  # condition of an eigenvalue from which it is named
 

@@ -5,10 +5,12 @@ from math import pi
 
 import numpy as np
 
+from service.compute.assembly import Matrix
 from service.compute.damped_modes import Complexes, Roots, damped_roots, first_order_roots
 from service.compute.machine import Bearing, Floats
 from service.compute.pencil import Pencil
 from service.compute.real_modes import Modes
+from service.compute.solve import AnyPencil
 
 NOTHING = 1e-14  # of the largest entry: damping below this on a massless motion is none
 
@@ -27,10 +29,10 @@ class Damping:
     alpha, beta : C = αM + βK besides, 1/s and s
     """
 
-    C: Floats
-    H: Floats
-    G: Floats
-    bearings: tuple[tuple[Bearing, Floats], ...] = ()
+    C: Matrix
+    H: Matrix
+    G: Matrix
+    bearings: tuple[tuple[Bearing, Matrix], ...] = ()
     ratio: float = 0.0
     alpha: float = 0.0
     beta: float = 0.0
@@ -38,18 +40,18 @@ class Damping:
     def without_dissipation(self) -> "Damping":
         """The gyroscopic terms and the bearings' stiffness alone."""
         bearings = tuple((bearing.elastic(), rows) for bearing, rows in self.bearings)
-        return Damping(np.zeros_like(self.C), np.zeros_like(self.H), self.G, bearings)
+        return Damping(0.0 * self.C, 0.0 * self.H, self.G, bearings)
 
-    def viscous(self, rpm: float) -> Floats:
+    def viscous(self, rpm: float) -> Matrix:
         """C + ωG with the bearings at `rpm`."""
         C = self.C + (rpm * pi / 30.0) * self.G
         for bearing, rows in self.bearings:
             C = C + rows.T @ bearing.coefficients(rpm)[1] @ rows
         return C
 
-    def circulatory(self, rpm: float) -> Floats:
+    def circulatory(self, rpm: float) -> Matrix:
         """The skew-symmetric part of the bearings' stiffness at `rpm`."""
-        S = np.zeros_like(self.C)
+        S = 0.0 * self.C
         for bearing, rows in self.bearings:
             K = bearing.coefficients(rpm)[0]
             S = S + rows.T @ ((K - K.T) / 2) @ rows
@@ -77,6 +79,11 @@ class DampedModes:
     method: str
 
 
+def has_entries(A: Matrix) -> bool:
+    """Whether any entry of a dense or sparse matrix isn't zero."""
+    return bool(A.any()) if isinstance(A, np.ndarray) else bool(np.any(A.data))
+
+
 def modal_terms(
     damping: Damping, modes: Modes, shapes: Floats, rpm: float
 ) -> tuple[Floats, Floats | Complexes]:
@@ -90,13 +97,13 @@ def modal_terms(
     D = shapes.T @ damping.viscous(rpm) @ shapes
     D = D + np.diag(2 * damping.ratio * omega + damping.alpha + damping.beta * modes.values)
     S = shapes.T @ damping.circulatory(rpm) @ shapes
-    if damping.H.any():
+    if has_entries(damping.H):
         return D, S + 1j * (shapes.T @ damping.H @ shapes)
     return D, S
 
 
 def damped_modes(
-    pencil: Pencil, modes: Modes, damping: Damping, M: Floats, K: Floats, rpm: float
+    pencil: AnyPencil, modes: Modes, damping: Damping, M: Matrix, K: Matrix, rpm: float
 ) -> DampedModes:
     """The damped modes of a machine at `rpm`.
 
@@ -109,20 +116,19 @@ def damped_modes(
     shapes = pencil.full(modes.shapes)
     C = damping.viscous(rpm) + damping.alpha * M + damping.beta * K
     stiffness = K + damping.circulatory(rpm) + 1j * damping.H
-    if _acts_on_massless(pencil, C, damping):
+    if isinstance(pencil, Pencil) and _acts_on_massless(pencil, C, damping):
         roots = first_order_roots(pencil, M, C, stiffness)
         found: Complexes = pencil.tied(roots.shapes)
     else:
         roots = damped_roots(modes.values, *modal_terms(damping, modes, shapes, rpm))
         found = shapes @ roots.shapes
-        C = C + _modal_damping(damping.ratio, modes, shapes, M)
+        if damping.ratio:
+            C = C + _modal_damping(damping.ratio, modes, shapes, M)
     return _normalized(roots, found, pencil, M, C, stiffness)
 
 
 def _modal_damping(ratio: float, modes: Modes, shapes: Floats, M: Floats) -> Floats:
     """MΦ·diag(2ζω)·ΦᵀM: the matrix that gives every mode the ratio ζ."""
-    if ratio == 0.0:
-        return np.zeros_like(M)
     pushed = M @ shapes
     matrix: Floats = (pushed * (2 * ratio * np.sqrt(np.maximum(modes.values, 0.0)))) @ pushed.T
     return matrix
@@ -140,7 +146,7 @@ def _acts_on_massless(pencil: Pencil, C: Floats, damping: Damping) -> bool:
 
 
 def _normalized(
-    roots: Roots, shapes: Complexes, pencil: Pencil, M: Floats, C: Floats, K: Complexes
+    roots: Roots, shapes: Complexes, pencil: AnyPencil, M: Matrix, C: Matrix, K: Matrix
 ) -> DampedModes:
     """Scale and turn the shapes, then take the residual of the full problem."""
     weight = np.sqrt(np.maximum(np.einsum("ij,ij->j", shapes.conj(), M @ shapes).real, 0.0))

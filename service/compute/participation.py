@@ -3,11 +3,10 @@
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.linalg import lapack
 
 from service.compute.assembly import Assembly, Entries, Matrix
 from service.compute.machine import Floats, Integers, Shapes
-from service.compute.pencil import Pencil
+from service.compute.solve import AnyPencil
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,7 +26,7 @@ class Direction:
 
 
 def effective_masses(
-    M: Matrix, pencil: Pencil, shapes: Shapes, directions: tuple[list[int], Floats]
+    M: Matrix, pencil: AnyPencil, shapes: Shapes, directions: tuple[list[int], Floats]
 ) -> list[Direction]:
     """Γ² of each mode, Γ = φᵀMr, r the rigid-body motion of all supports in one direction.
 
@@ -46,8 +45,7 @@ def effective_masses(
     axes, motions = directions
     pushed = M @ motions
     reduced = pushed if pencil.R is None else pencil.R.T @ pushed
-    solved, _ = lapack.dtrtrs(pencil.L, reduced, lower=1)
-    totals = (solved**2).sum(axis=0).tolist()
+    totals = pencil.mass_norms(reduced).tolist()
     effective = (np.abs(shapes.T @ pushed) ** 2).T.tolist()
     return [
         Direction(axis, total, part)
@@ -111,7 +109,7 @@ def _shares(energy: Floats, owners: Integers, parts: int) -> Floats:
     return sums / np.where(total > 0.0, total, 1.0)
 
 
-def mobility_shares(pencil: Pencil, shapes: Shapes, places: list[int]) -> Floats:
+def mobility_shares(pencil: AnyPencil, shapes: Shapes, places: list[int]) -> Floats:
     """(places, m) share of each mode in the driving-point mobility at motions of the machine.
 
     Over all modes Σφᵢ² = (RM⁻¹Rᵀ)ᵢᵢ, so φᵢ² over that lies between 0 and 1 and has no unit.
@@ -121,7 +119,8 @@ def mobility_shares(pencil: Pencil, shapes: Shapes, places: list[int]) -> Floats
     shapes : (n, m) mass-normalized shapes in all motions
     places : motions of the machine, 0 to n − 1
     """
-    R = np.eye(pencil.size)[places] if pencil.R is None else pencil.R[places]
-    solved, _ = lapack.dtrtrs(pencil.L, R.T, lower=1)
-    total = (solved**2).sum(axis=0)[:, None]
+    chosen = np.zeros((len(places), len(shapes)))
+    chosen[range(len(places)), places] = 1.0
+    R = chosen if pencil.R is None else chosen @ pencil.R
+    total = pencil.mass_norms(R.T)[:, None]
     return np.where(total > 0.0, shapes[places] ** 2 / np.where(total > 0.0, total, 1.0), 0.0)

@@ -10,8 +10,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 from scipy.linalg import lapack
+from scipy.sparse import csr_array, vstack
 
-from service.compute.assembly import Assembly
+from service.compute.assembly import Assembly, Matrix
 from service.compute.constraints import Ties, eliminate
 from service.compute.machine import Floats, Unsound
 
@@ -52,6 +53,12 @@ class Pencil:
         """Number of coordinates r."""
         return len(self.M)
 
+    def mass_norms(self, columns: Floats) -> Floats:
+        """bᵀM⁻¹b of each (r,) column b."""
+        solved, _ = lapack.dtrtrs(self.L, columns, lower=1)
+        norms: Floats = (solved**2).sum(axis=0)
+        return norms
+
     def full(self, coordinates: Floats) -> Floats:
         """All n motions from (r, …) coordinates."""
         return coordinates if self.R is None else self.R @ coordinates
@@ -61,7 +68,7 @@ class Pencil:
         return motions if self.ties.T is None else self.ties.T @ motions
 
 
-def rows_at(assembly: Assembly, rpm: float) -> tuple[Floats, Floats]:
+def rows_at(assembly: Assembly, rpm: float) -> tuple[Matrix, Floats]:
     """Deformation rows (m, n) and stiffnesses (m,) with the bearings as they are at `rpm`.
 
     A bearing comes in by the symmetric part of its stiffness, along its principal directions. A
@@ -74,7 +81,10 @@ def rows_at(assembly: Assembly, rpm: float) -> tuple[Floats, Floats]:
         values, vectors = np.linalg.eigh((stiffness + stiffness.T) / 2)
         J.append((vectors.T @ rows)[values != 0.0])
         k.append(values[values != 0.0])
-    return (np.vstack(J), np.concatenate(k)) if len(J) > 1 else (J[0], k[0])
+    if len(J) == 1:
+        return J[0], k[0]
+    stacked = np.vstack(J) if isinstance(J[0], np.ndarray) else csr_array(vstack(J))
+    return stacked, np.concatenate(k)
 
 
 def pencil_of(assembly: Assembly, rpm: float = 0.0) -> Pencil:

@@ -230,7 +230,7 @@ def _veers(here: Station, change: Floats | Complexes, i: int, j: int) -> bool:
     coupling = 4.0 * share**2 * B[0, 1] * B[1, 0]
     if np.abs(coupling[-1]) <= (1e-9 * np.abs(here.roots[i])) ** 2:
         return False
-    gap = np.sqrt(difference**2 + coupling)
+    gap: Complexes = np.sqrt(difference**2 + coupling)
     # Continuous branch of the square root, from λᵢ − λⱼ on.
     for place in range(1, PATH_POINTS):
         if (gap[place] * np.conj(gap[place - 1])).real < 0.0:
@@ -310,7 +310,9 @@ def onsets(problem: Turning, found: Map) -> list[tuple[int, float, complex]]:
         return root.real
 
     noise = 1e-11 * np.abs(found.roots)
-    sure = (found.roots.real < -noise).any(axis=0) & (found.roots.real > noise).any(axis=0)
+    decays = np.asarray((found.roots.real < -noise).any(axis=0))
+    grows = np.asarray((found.roots.real > noise).any(axis=0))
+    sure = decays & grows
     return [item for item in _all(problem, found, growth) if sure[item[0]]]
 
 

@@ -6,11 +6,13 @@ from typing import Any
 
 import numpy as np
 
+from schemas.faults import Invalid
 from schemas.modes import ModesQuestion
 from schemas.system import AnySystem, BodiesSystem
 from service.compute.damped_modes import NEARLY_DEFECTIVE
 from service.compute.damped_system import DampedModes, Damping, damped_modes
-from service.compute.real_modes import ALL_UP_TO, ELSE, Modes, Wanted, real_modes
+from service.compute.real_modes import ALL_UP_TO, ELSE, Modes, Wanted
+from service.compute.solve import lowest_modes
 from service.compute.whirl import whirl
 from service.tasks.damping import damping_of, speed_matters, stiffness_of
 from service.tasks.machines import Analysed, analyse
@@ -21,6 +23,8 @@ from service.tasks.modes import (
     masses_of,
     named_shares,
     scaled,
+    shape_rows,
+    undamped_modes,
 )
 from service.tasks.readings import mode_readings, number, percent
 from service.tasks.wary import geometry_warnings
@@ -60,7 +64,7 @@ def solve_damped(system: AnySystem, rpm: float, *, dissipation: bool, count: int
         damping = damping.without_dissipation()
     size = analysed.pencil.size
     used = size if size <= PROJECTED_FROM else min(size, max(PROJECTED_ON, 3 * count))
-    undamped = real_modes(analysed.pencil, Wanted(count=used))
+    undamped = lowest_modes(analysed.pencil, Wanted(count=used))
     found = damped_modes(
         analysed.pencil, undamped, damping, analysed.M, stiffness_of(system, analysed, rpm), rpm
     )
@@ -79,14 +83,27 @@ def _expected(analysed: Analysed, damping: Damping, rpm: float) -> int:
     return roots
 
 
-def answer_damped(system: AnySystem, question: ModesQuestion) -> dict[str, Any]:
-    """The answer to a question on damped modes; pointers of faults start at the system."""
+def modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]:
+    """The task `modes`: undamped ones, or damped ones or those of a turning machine where asked.
+
+    Raises
+    ------
+    Invalid
+        The system can't be computed; pointers start at the question.
+    """
+    if not question.damped and question.at_rpm is None:
+        return undamped_modes(system, question)
     rpm = question.at_rpm or 0.0
-    solved = solve_damped(system, rpm, dissipation=question.damped, count=question.count or ELSE)
+    try:
+        solved = solve_damped(
+            system, rpm, dissipation=question.damped, count=question.count or ELSE
+        )
+    except Invalid as fault:
+        raise fault.under("/system") from None
     chosen = _chosen(solved, question)
     return {
-        "degrees_of_freedom": list(solved.analysed.names),
-        "modes": damped_list(system, solved, chosen, question.shape_scale),
+        "degrees_of_freedom": question.shapes_of or list(solved.analysed.names),
+        "modes": damped_list(system, solved, chosen, question),
         "warnings": _warnings(system, solved, question, chosen),
         "evidence": _evidence(solved, chosen),
         "caution": CAUTION,
@@ -112,7 +129,7 @@ def kind_of_root(root: complex, bound: float) -> str:
 
 
 def damped_list(
-    system: AnySystem, solved: Damped, chosen: list[int], scale: str
+    system: AnySystem, solved: Damped, chosen: list[int], question: ModesQuestion
 ) -> list[dict[str, Any]]:
     """The modes as the contract writes them."""
     analysed, found = solved.analysed, solved.modes
@@ -125,7 +142,8 @@ def damped_list(
     readings = _readings(solved, shapes, roots, kinds, shares)
     spins = spins_of(system)
     weight = np.sqrt(np.maximum(np.asarray(analysed.M.diagonal()), 0.0))
-    shown = scaled(shapes, scale).T
+    rows = shape_rows(analysed, question)
+    shown = scaled(shapes, question.shape_scale)[rows].T
     return [
         {
             "number": place + 1,

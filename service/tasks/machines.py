@@ -1,8 +1,10 @@
 """From a posted system to what compute works on, and from its complaints back to a place in it."""
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
+from scipy.sparse import csc_array
 
 from schemas.connections import Beam
 from schemas.faults import Fault, Invalid, pointer
@@ -10,8 +12,12 @@ from schemas.quantities import split_degree_of_freedom
 from schemas.system import AnySystem, BodiesSystem, MatricesSystem
 from service.compute import machine as m
 from service.compute.assembly import Assembly, Entries, Matrix, assemble
+from service.compute.constraints import Ties
+from service.compute.memory import check_memory, dense_bytes, prefer_sparse
 from service.compute.participation import support_motions
-from service.compute.pencil import Pencil, pencil_of, pencil_of_matrices
+from service.compute.pencil import pencil_of_matrices
+from service.compute.solve import AnyPencil, pencil_at
+from service.compute.sparse_modes import SparsePencil
 from service.tasks.matrices import dense, matrix_of, symmetric_part
 from service.tasks.translation import NUMBER_OF, machine_of
 
@@ -38,7 +44,7 @@ class Analysed:
     M: Matrix
     masses: Entries
     carriers: tuple[str, ...]
-    pencil: Pencil
+    pencil: AnyPencil
     directions: tuple[list[int], m.Floats]
     assembly: Assembly | None
 
@@ -83,7 +89,7 @@ def _of_bodies(system: BodiesSystem, rpm: float) -> Analysed:
         assembly.M,
         assembly.masses,
         assembly.carriers,
-        pencil_of(assembly, rpm),
+        pencil_at(assembly, rpm),
         support_motions(assembly),
         assembly,
     )
@@ -100,15 +106,15 @@ def _of_matrices(system: MatricesSystem) -> Analysed:
             matrices[field] = symmetric_part(found, posted, field, faults)
     if faults:
         raise Invalid(faults)
-    M, K = dense(matrices["mass"]), dense(matrices["stiffness"])
     split = [split_degree_of_freedom(name) for name in system.degrees_of_freedom]
     pairs = [pair for pair in split if pair is not None]
     bodies = tuple(dict.fromkeys(body for body, _ in pairs))
     index = {body: number for number, body in enumerate(bodies)}
     axes = np.array([NUMBER_OF[motion] for _, motion in pairs])
     owners = np.array([index[body] for body, _ in pairs])
-    row, column = (index.astype(int) for index in matrices["mass"].nonzero())
+    mass = matrices["mass"].tocoo()
     names = tuple(system.degrees_of_freedom)
+    M, pencil = _pencil_of_matrices(matrices["mass"], matrices["stiffness"], names)
     present = sorted(set(axes.tolist()))
     return Analysed(
         names,
@@ -116,12 +122,25 @@ def _of_matrices(system: MatricesSystem) -> Analysed:
         axes,
         bodies,
         M,
-        Entries(row, column, M[row, column], owners[row]),
+        Entries(mass.row.astype(int), mass.col.astype(int), mass.data, owners[mass.row]),
         bodies,
-        pencil_of_matrices(K, M, names),
+        pencil,
         (present, (axes[:, None] == present).astype(float)),
         None,
     )
+
+
+def _pencil_of_matrices(
+    M: csc_array[Any], K: csc_array[Any], names: tuple[str, ...]
+) -> tuple[Matrix, AnyPencil]:
+    """The mass matrix and the pencil, dense or sparse by size and density."""
+    size = len(names)
+    if prefer_sparse(size, max(M.nnz, K.nnz)):
+        ties = Ties(None, np.arange(size), (), ())
+        return M, SparsePencil(K, M, None, names, ties)
+    check_memory(dense_bytes(size), "stiffness")
+    full = dense(M)
+    return full, pencil_of_matrices(dense(K), full, names)
 
 
 def _place(system: AnySystem, part: tuple[str | int, ...]) -> str:

@@ -5,7 +5,7 @@ from typing import Any
 
 import numpy as np
 
-from schemas.faults import Invalid
+from schemas.faults import Fault, Invalid, pointer
 from schemas.modes import ModesQuestion
 from schemas.system import AnySystem
 from service.compute.machine import AXES, Floats, Shapes
@@ -15,7 +15,8 @@ from service.compute.participation import (
     kinetic_shares,
     strain_shares,
 )
-from service.compute.real_modes import Modes, Wanted, real_modes
+from service.compute.real_modes import Modes, Wanted
+from service.compute.solve import lowest_modes
 from service.tasks.machines import Analysed, analyse
 from service.tasks.readings import mode_readings
 from service.tasks.wary import modes_warnings, system_warnings
@@ -27,7 +28,7 @@ CAUTION = (
 LEAST_SHARE, MOST_SHARES = 0.005, 12
 
 
-def modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]:
+def undamped_modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]:
     """Answer a question on modes.
 
     Raises
@@ -36,18 +37,15 @@ def modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]:
         The system can't be computed; pointers start at the question.
     """
     try:
-        if question.damped or question.at_rpm is not None:
-            from service.tasks.damped import answer_damped
-
-            return answer_damped(system, question)
         analysed = analyse(system)
     except Invalid as fault:
         raise fault.under("/system") from None
+    rows = shape_rows(analysed, question)
     limit = None if question.below_hz is None else (2 * pi * question.below_hz) ** 2
-    found = real_modes(analysed.pencil, Wanted(question.count, limit))
+    found = lowest_modes(analysed.pencil, Wanted(question.count, limit))
     return {
-        "degrees_of_freedom": list(analysed.names),
-        "modes": mode_list(analysed, found, question.shape_scale),
+        "degrees_of_freedom": question.shapes_of or list(analysed.names),
+        "modes": mode_list(analysed, found, question.shape_scale, rows),
         "warnings": [
             *system_warnings(system, analysed, found),
             *modes_warnings(analysed, found, question),
@@ -55,6 +53,30 @@ def modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]:
         "evidence": evidence(found),
         "caution": CAUTION,
     }
+
+
+def shape_rows(analysed: Analysed, question: ModesQuestion) -> list[int] | slice:
+    """Rows of the shapes that are asked for.
+
+    Raises
+    ------
+    Invalid
+        One names no motion of the system.
+    """
+    if question.shapes_of is None:
+        return slice(None)
+    row_of = {name: row for row, name in enumerate(analysed.names)}
+    faults = [
+        Fault(
+            pointer(("shapes_of", index)),
+            f"the system has no degree of freedom '{name}' that can move",
+        )
+        for index, name in enumerate(question.shapes_of)
+        if name not in row_of
+    ]
+    if faults:
+        raise Invalid(faults)
+    return [row_of[name] for name in question.shapes_of]
 
 
 def hertz(value: float) -> float:
@@ -96,7 +118,9 @@ def kinds(found: Modes) -> list[str]:
     ]
 
 
-def mode_list(analysed: Analysed, found: Modes, scale: str) -> list[dict[str, Any]]:
+def mode_list(
+    analysed: Analysed, found: Modes, scale: str, rows: list[int] | slice
+) -> list[dict[str, Any]]:
     """The modes as the contract writes them."""
     shapes = analysed.pencil.full(found.shapes)
     masses = masses_of(analysed, shapes)
@@ -109,7 +133,7 @@ def mode_list(analysed: Analysed, found: Modes, scale: str) -> list[dict[str, An
     shares = named_shares(analysed, kinetic, strain, kind_list)
     hz = [float(frequency["frequency_hz"] or 0.0) for frequency in frequencies]
     readings = mode_readings(analysed, shapes, hz, kind_list, shares)
-    shown = scaled(shapes, scale).T.tolist()
+    shown = scaled(shapes, scale)[rows].T.tolist()
     return [
         {
             "number": index + 1,
@@ -185,22 +209,18 @@ def named_shares(
     return [
         ([] if kind == "rigid-body" else _largest("strain", names, strained))
         + _largest("kinetic", analysed.carriers, moving)
-        for kind, strained, moving in zip(
-            kind_list, strain.T.tolist(), kinetic.T.tolist(), strict=True
-        )
+        for kind, strained, moving in zip(kind_list, strain.T, kinetic.T, strict=True)
     ]
 
 
-def _largest(kind: str, names: tuple[str, ...], shares: list[float]) -> list[dict[str, Any]]:
+def _largest(kind: str, names: tuple[str, ...], shares: Floats) -> list[dict[str, Any]]:
     """Largest first, equal ones (to six digits) in the order of the machine."""
-    listed = [
-        (-round(abs(share), 6), place)
-        for place, share in enumerate(shares)
-        if abs(share) >= LEAST_SHARE
-    ]
+    notable = np.flatnonzero(np.abs(shares) >= LEAST_SHARE).tolist()
+    values = [float(shares[place]) for place in notable]
+    listed = sorted(zip([-round(abs(v), 6) for v in values], notable, values, strict=True))
     return [
-        {"of": names[place], "kind": kind, "share": shares[place]}
-        for _, place in sorted(listed)[:MOST_SHARES]
+        {"of": names[place], "kind": kind, "share": value}
+        for _, place, value in listed[:MOST_SHARES]
     ]
 
 

@@ -5,7 +5,7 @@ from typing import Any
 
 import numpy as np
 
-from service.compute.machine import AXES, Floats
+from service.compute.machine import AXES, Floats, Integers
 from service.tasks.machines import Analysed
 
 NOTABLE = 0.15  # of a mode's kinetic energy: a motion or a body worth naming
@@ -50,15 +50,11 @@ def mode_readings(
     shapes : (n, m) mass-normalized shapes
     frequencies : |ω|/2π of each, Hz
     """
-    energies = np.abs(shapes * (analysed.M @ shapes)).T.tolist()
-    motions = shapes.T.tolist()
-    owners, axes = analysed.owners.tolist(), analysed.axes.tolist()
+    energies = np.abs(shapes * (analysed.M @ shapes)).T
     return [
-        _mode_reading(
-            frequency, kind, part, _what_moves(analysed.points, owners, axes, energy, motion)
-        )
+        _mode_reading(frequency, kind, part, _what_moves(analysed, energy, motion))
         for frequency, kind, part, energy, motion in zip(
-            frequencies, kinds, shares, energies, motions, strict=True
+            frequencies, kinds, shares, energies, shapes.T, strict=True
         )
     ]
 
@@ -77,33 +73,28 @@ def _mode_reading(frequency: float, kind: str, shares: list[dict[str, Any]], mov
     return sentence + "."
 
 
-def _what_moves(
-    bodies: tuple[str, ...],
-    owners: list[int],
-    axes: list[int],
-    energy: list[float],
-    motion: list[float],
-) -> str:
+def _what_moves(analysed: Analysed, energy: Floats, motion: Floats) -> str:
     """The bodies with most kinetic energy and the motions that carry it."""
-    per_body = [0.0] * len(bodies)
-    for owner, part in zip(owners, energy, strict=True):
-        per_body[owner] += part
-    notable = NOTABLE * sum(per_body)
-    leading = [body for body, part in enumerate(per_body) if part >= notable and part > 0.0]
-    leading = sorted(leading, key=lambda body: -_rounded(per_body[body], notable))[:3]
+    per_body = np.bincount(analysed.owners, energy)
+    notable = NOTABLE * float(per_body.sum())
+    leading = np.flatnonzero((per_body >= notable) & (per_body > 0.0)).tolist()
+    leading.sort(key=lambda body: -_rounded(float(per_body[body]), notable))
     if not leading:
         return "many bodies move, none with a large part of the kinetic energy"
-    own = {body: _motions(body, owners, axes, energy) for body in leading}
+    leading = leading[:3]
+    rows = {body: np.flatnonzero(analysed.owners == body) for body in leading}
+    own = {body: _motions(analysed.axes[rows[body]], energy[rows[body]]) for body in leading}
     first = own[leading[0]]
     if len(leading) > 1 and all(motions == first for motions in own.values()):
         signs = {
-            motion[row] > 0.0
-            for row, owner in enumerate(owners)
-            if owner in own and axes[row] == first[0]
+            bool(motion[row] > 0.0)
+            for body in leading
+            for row in rows[body]
+            if analysed.axes[row] == first[0]
         }
-        names = listed([bodies[body] for body in leading])
+        names = listed([analysed.points[body] for body in leading])
         return f"{names} move {_words(first)}{_together(len(signs) == 1, len(leading))}"
-    return listed([f"{bodies[body]} moves {_words(own[body])}" for body in leading])
+    return listed([f"{analysed.points[body]} moves {_words(own[body])}" for body in leading])
 
 
 def _rounded(part: float, unit: float) -> int:
@@ -111,11 +102,11 @@ def _rounded(part: float, unit: float) -> int:
     return round(part / unit * 1e6)
 
 
-def _motions(body: int, owners: list[int], axes: list[int], energy: list[float]) -> list[int]:
+def _motions(axes: Integers, energy: Floats) -> list[int]:
     """The axes that carry a notable part of one body's kinetic energy, the largest first."""
-    own = [(energy[row], axes[row]) for row, owner in enumerate(owners) if owner == body]
-    notable = NOTABLE * sum(part for part, _ in own)
-    chosen = [(part, axis) for part, axis in own if part >= notable]
+    parts = list(zip(energy.tolist(), axes.tolist(), strict=True))
+    notable = NOTABLE * sum(part for part, _ in parts)
+    chosen = [(part, axis) for part, axis in parts if part >= notable]
     chosen.sort(key=lambda pair: -_rounded(pair[0], notable))
     return [axis for _, axis in chosen[:3]]
 

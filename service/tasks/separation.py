@@ -11,7 +11,7 @@ from schemas.separation import FractionRule, Operation, SeparationQuestion
 from schemas.system import AnySystem
 from service.compute.machine import Floats
 from service.compute.participation import mobility_shares
-from service.compute.real_modes import Wanted, real_modes
+from service.compute.real_modes import Wanted
 from service.compute.separation import (
     Excitation,
     Margin,
@@ -21,6 +21,7 @@ from service.compute.separation import (
     free_ranges,
     margin,
 )
+from service.compute.solve import lowest_modes
 from service.tasks.machines import Analysed, analyse
 from service.tasks.modes import CAUTION, evidence, hertz, kinds
 from service.tasks.readings import listed, number, two_percents
@@ -68,7 +69,7 @@ def separation(system: AnySystem, question: SeparationQuestion) -> dict[str, Any
         for item in question.excitations
     ]
     top = max(_top(item, question.operation) for item in excitations) * (1.0 + required.above)
-    found = real_modes(analysed.pencil, Wanted(limit=(2 * pi * top) ** 2, spare=1))
+    found = lowest_modes(analysed.pencil, Wanted(limit=(2 * pi * top) ** 2, spare=1))
     shapes = analysed.pencil.full(found.shapes)
     shares = _participations(analysed, shapes, places)
     oscillating = [

@@ -5,8 +5,11 @@ from typing import Any
 import numpy as np
 
 from schemas.system import AnySystem, BodiesSystem
+from service.compute.real_modes import Wanted
 from service.compute.rigid_motions import rigid_motions
-from service.tasks.machines import analyse, degrees_of_freedom
+from service.compute.solve import lowest_modes
+from service.compute.sparse_modes import SparsePencil
+from service.tasks.machines import Analysed, analyse, degrees_of_freedom
 from service.tasks.wary import geometry_warnings
 
 
@@ -19,7 +22,7 @@ def summarize(system: AnySystem) -> dict[str, Any]:
         The system can't be computed; pointers start at the system.
     """
     analysed = analyse(system)
-    free = rigid_motions(analysed.pencil).shape[1]
+    free = _free(analysed)
     mass, centre = _mass(system)
     return {
         "kind": system.kind,
@@ -31,6 +34,13 @@ def summarize(system: AnySystem) -> dict[str, Any]:
         "rigid_body_motions": free,
         "warnings": geometry_warnings(system, analysed, free),
     }
+
+
+def _free(analysed: Analysed) -> int:
+    """Number of rigid-body motions; of a large system those among the lowest seven modes."""
+    if isinstance(analysed.pencil, SparsePencil):
+        return int(lowest_modes(analysed.pencil, Wanted(count=7)).rigid.sum())
+    return int(rigid_motions(analysed.pencil).shape[1])
 
 
 def _mass(system: AnySystem) -> tuple[float | None, list[float] | None]:
