@@ -5,7 +5,7 @@ from typing import Annotated, Literal, Self
 from pydantic import Field, model_validator
 
 from schemas.base import Answer, Strict, fault
-from schemas.modes import ModesEvidence
+from schemas.modes import DampedEvidence, ModesEvidence
 from schemas.quantities import (
     DegreeOfFreedom,
     Frequency,
@@ -85,7 +85,15 @@ class TorsionalRule(Strict):
     """Always "torsional"."""
 
 
-Rule = Annotated[FractionRule | TorsionalRule, Field(discriminator="kind")]
+class AmplificationRule(Strict):
+    """A margin that grows with the mode's amplification factor, as the published standards for
+    rotating machinery ask of lateral modes; needs damping."""
+
+    kind: Literal["amplification"]
+    """Always "amplification"."""
+
+
+Rule = Annotated[FractionRule | TorsionalRule | AmplificationRule, Field(discriminator="kind")]
 Places = Annotated[list[DegreeOfFreedom], Field(min_length=1, max_length=100)]
 
 
@@ -114,8 +122,6 @@ class SeparationQuestion(Question):
         unknown = set(self.forces_at or {}) - {item.name for item in self.excitations}
         if unknown:
             raise fault("there is no such excitation", "forces_at", min(unknown))
-        if self.damped:
-            raise fault("damped modes aren't computed by this version: leave it out", "damped")
         return self
 
 
@@ -145,6 +151,10 @@ class Finding(Answer):
     coincidence_rpm: float | None
     """Speed of the machine at which the excitation meets the mode, rpm; null for a fixed
     frequency."""
+    damping_ratio: float | None = None
+    """Of damped modes: the damping ratio there (no unit)."""
+    amplification_factor: float | None = None
+    """Of damped modes: 1/(2·damping ratio) (no unit)."""
     participation: float | None = None
     """With `forces_at`: the mode's share of the driving-point mobility where the excitation acts,
     0 to 1 (no unit)."""
@@ -174,6 +184,20 @@ class SpeedRange(Answer):
     """Highest speed, rpm."""
 
 
+class MapEvidence(Answer):
+    """What the map rests on."""
+
+    method: str
+    """How it was made."""
+    speeds_added: int
+    """Speeds solved between the points asked for, where shapes changed much (no unit)."""
+    least_correlation: float
+    """The smallest correlation of a mode's shapes at neighbouring speeds (no unit)."""
+    largest_relative_residual: float
+    """The largest relative residual of the full quadratic problem at the crossings and the last
+    speed (no unit)."""
+
+
 class SeparationAnswer(Answer):
     """Whether every mode keeps its separation, the worst finding first."""
 
@@ -196,7 +220,7 @@ class SeparationAnswer(Answer):
     """Where in the whole operation every finding is clear."""
     warnings: list[str]
     """What a careful engineer would question."""
-    evidence: ModesEvidence
+    evidence: ModesEvidence | DampedEvidence | MapEvidence
     """What the modes rest on."""
     caution: str
     """How far the answer goes."""

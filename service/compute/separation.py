@@ -1,6 +1,7 @@
 """Margins between natural frequencies and what excites the machine."""
 
 from dataclasses import dataclass
+from math import inf
 
 NEAR = 1e-12  # relative: an edge that differs by less is met
 
@@ -30,6 +31,23 @@ class Required:
 
     above: float
     below: float
+
+
+UNAMPLIFIED = 2.5  # amplification factor below which a mode counts as critically damped
+
+
+def required_by_amplification(damping_ratio: float) -> Required:
+    """Margins that grow with the amplification factor AF = 1/(2ζ).
+
+    API 617 (7th edition), lateral separation, from memory: none for AF < 2.5; else
+    17·(1 − 1/(AF − 1.5)) % of the lowest speed for a mode below it, and 10 % more of the highest
+    speed for a mode above it.
+    """
+    factor = 1.0 / (2.0 * damping_ratio) if damping_ratio > 0.0 else inf
+    if factor < UNAMPLIFIED:
+        return Required(0.0, 0.0)
+    share = 0.17 * (1.0 - 1.0 / (factor - 1.5))
+    return Required(0.10 + share, share)
 
 
 @dataclass(frozen=True, slots=True)

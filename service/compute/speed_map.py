@@ -243,27 +243,37 @@ def _veers(here: Station, change: Floats | Complexes, i: int, j: int) -> bool:
 
 def refined(problem: Turning, rpm: float, root: complex, state: Complexes) -> complex:
     """The root at `rpm` near `root`, by inverse iteration on the quadratic problem."""
+    x = state[: len(problem.values)] / problem.scale
+    return _inverse_iteration(problem, rpm, root, x)[0]
+
+
+def root_state(problem: Turning, rpm: float, root: complex) -> Complexes:
+    """The state vector (Ση, η′) of a known root at `rpm`."""
+    start = np.random.default_rng(5).standard_normal(len(problem.values)) + 0.0j
+    _, x = _inverse_iteration(problem, rpm, root * (1.0 + 1e-9), start)
+    return np.concatenate([problem.scale * x, root * x])
+
+
+def _inverse_iteration(
+    problem: Turning, rpm: float, root: complex, x: Complexes
+) -> tuple[complex, Complexes]:
     D, S = problem.terms(rpm)
-    size = len(problem.values)
-    x = state[:size] / problem.scale
-    x = x / np.linalg.norm(x)
-    v = x.conj()
     K = np.diag(problem.values) + S
-    identity = np.eye(size)
+    identity = np.eye(len(problem.values))
+    x = x / np.linalg.norm(x)
     for _ in range(40):
-        Q = root**2 * identity + root * D + K
         slope = 2 * root * x + D @ x
         try:
-            u = np.linalg.solve(Q, slope)
+            u = np.linalg.solve(root**2 * identity + root * D + K, slope)
         except np.linalg.LinAlgError:
-            return root
+            break
+        v = x.conj()
         step = complex((v @ x) / (v @ u))
         root = root - step
         x = u / np.linalg.norm(u)
-        v = x.conj()
         if abs(step) <= 4e-16 * abs(root):
             break
-    return root
+    return root, x
 
 
 def solve_between(
@@ -294,12 +304,20 @@ def solve_between(
         return None
 
 
-def crossings(problem: Turning, found: Map, order: float) -> list[tuple[int, float, complex]]:
-    """(mode, rpm, root) where |λ|/2π equals `order` times the speed."""
+def crossings(
+    problem: Turning, found: Map, order: float | None, frequency: float | None = None
+) -> list[tuple[int, float, complex]]:
+    """(mode, rpm, root) where |λ|/2π equals `order` times the speed, or `frequency` in Hz."""
 
     def away(root: complex, rpm: float) -> float:
-        return abs(root) / (2 * pi) - order * rpm / 60.0
+        excited = order * rpm / 60.0 if order is not None else frequency or 0.0
+        return abs(root) / (2 * pi) - excited
 
+    if order is None:
+        # A mode that doesn't change with speed meets a fixed frequency everywhere or nowhere.
+        sizes = np.abs(found.roots)
+        moving = np.ptp(sizes, axis=0) > 1e-9 * sizes.max(axis=0)
+        return [item for item in _all(problem, found, away) if moving[item[0]]]
     return _all(problem, found, away)
 
 

@@ -105,7 +105,7 @@ def modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]:
         "degrees_of_freedom": question.shapes_of or list(solved.analysed.names),
         "modes": damped_list(system, solved, chosen, question),
         "warnings": _warnings(system, solved, question, chosen),
-        "evidence": _evidence(solved, chosen),
+        "evidence": damped_evidence(solved, chosen),
         "caution": CAUTION,
     }
 
@@ -261,7 +261,8 @@ def _nearly_defective(solved: Damped, chosen: list[int]) -> list[int]:
     ]
 
 
-def _evidence(solved: Damped, chosen: list[int]) -> dict[str, Any]:
+def damped_evidence(solved: Damped, chosen: list[int]) -> dict[str, Any]:
+    """What the chosen modes rest on."""
     found = solved.modes
     roots = sum(2 if root.imag > 0.0 or root == 0.0 else 1 for root in found.values.tolist())
     conditions = found.conditions[chosen]

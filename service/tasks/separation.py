@@ -1,48 +1,30 @@
 """The task `separation`: does every mode keep clear of everything that excites the machine?"""
 
+from collections.abc import Callable
 from dataclasses import dataclass
-from math import pi
 from typing import Any
 
-import numpy as np
-
-from schemas.faults import Fault, Invalid, pointer
-from schemas.separation import FractionRule, Operation, SeparationQuestion
+from schemas.faults import Fault, Invalid
+from schemas.separation import AmplificationRule, FractionRule, Operation, SeparationQuestion
 from schemas.system import AnySystem
-from service.compute.machine import Floats
-from service.compute.participation import mobility_shares
-from service.compute.real_modes import Wanted
 from service.compute.separation import (
     Excitation,
     Margin,
     Required,
-    barred,
-    coincidence_rpm,
     free_ranges,
     margin,
+    required_by_amplification,
 )
-from service.compute.solve import lowest_modes
-from service.tasks.machines import Analysed, analyse
-from service.tasks.modes import CAUTION, evidence, hertz, kinds
+from service.tasks.candidates import Candidate, candidates_of
+from service.tasks.modes import CAUTION
 from service.tasks.readings import listed, number, two_percents
-from service.tasks.wary import solution_warnings, system_warnings
 
-UNDRIVEN = 1e-12  # of the driving-point mobility: a mode with less is at a node of its shape
-TORSIONAL = Required(0.1, 0.1)  # API 617, torsional separation of 10 % (from memory)
+TORSIONAL = Required(0.1, 0.1)
+TORSIONAL_SOURCE = "API 617, torsional separation of 10 % (from memory)"
+AMPLIFICATION_SOURCE = (
+    "API 617 (7th edition), lateral separation by amplification factor (from memory)"
+)
 RANK = {"coincident": 0, "short": 1, "clear": 2, "unexcited": 3}
-
-
-@dataclass(frozen=True, slots=True)
-class Candidate:
-    """A mode that may meet an excitation; participation per excitation where it is asked for."""
-
-    number: int
-    frequency: float
-    participation: dict[str, float]
-
-    def undriven_by(self, excitation: str) -> bool:
-        """Whether the excitation acts only where this mode doesn't move."""
-        return self.participation.get(excitation, 1.0) < UNDRIVEN
 
 
 def separation(system: AnySystem, question: SeparationQuestion) -> dict[str, Any]:
@@ -54,12 +36,7 @@ def separation(system: AnySystem, question: SeparationQuestion) -> dict[str, Any
         The system can't be computed, or `forces_at` names no motion of it; pointers start at the
         question.
     """
-    try:
-        analysed = analyse(system)
-    except Invalid as fault:
-        raise fault.under("/system") from None
-    places = _places(analysed, question)
-    required = required_margins(question)
+    rule = rule_of(question)
     excitations = [
         Excitation(
             item.name,
@@ -68,23 +45,17 @@ def separation(system: AnySystem, question: SeparationQuestion) -> dict[str, Any
         )
         for item in question.excitations
     ]
-    top = max(_top(item, question.operation) for item in excitations) * (1.0 + required.above)
-    found = lowest_modes(analysed.pencil, Wanted(limit=(2 * pi * top) ** 2, spare=1))
-    shapes = analysed.pencil.full(found.shapes)
-    shares = _participations(analysed, shapes, places)
-    oscillating = [
-        Candidate(
-            index + 1,
-            hertz(float(found.values[index])),
-            {name: float(share[index]) for name, share in shares.items()},
-        )
-        for index, kind in enumerate(kinds(found))
-        if kind == "oscillating"
-    ]
-    candidates = _reachable(oscillating, excitations, question.operation, top)
+    top = max(_top(item, question.operation) for item in excitations) * (1.0 + rule.largest)
+    try:
+        found = candidates_of(system, question, top)
+    except Invalid as fault:
+        raise fault.under("/system") from None
+    if isinstance(question.rule, AmplificationRule) and not found.damped:
+        raise Invalid([Fault("/rule", "this rule needs damping, and the system has none")])
+    modes = _reachable(found.modes, excitations, question.operation, top)
     findings = [
-        _finding(mode, excitation, operation, required)
-        for mode in candidates
+        _finding(mode, excitation, operation, rule)
+        for mode in modes
         for excitation in excitations
         for operation in question.operation
     ]
@@ -94,58 +65,36 @@ def separation(system: AnySystem, question: SeparationQuestion) -> dict[str, Any
         "verdict": verdict,
         "reading": _reading(verdict, findings),
         "findings": findings,
-        "coincidences": _coincidences(candidates, excitations, question.operation),
-        "clear_speeds": _clear_speeds(
-            candidates, excitations, question.operation, required, findings
-        ),
-        "warnings": [
-            *system_warnings(system, analysed, found),
-            *solution_warnings(found),
-            *_warnings(findings, excitations, required),
-        ],
-        "evidence": evidence(found),
+        "coincidences": _coincidences(modes, excitations, question.operation),
+        "clear_speeds": _clear_speeds(modes, excitations, question.operation, rule),
+        "warnings": [*found.warnings, *_warnings(findings, excitations, rule)],
+        "evidence": found.evidence,
         "caution": CAUTION,
     }
 
 
-def required_margins(question: SeparationQuestion) -> Required:
+@dataclass(frozen=True, slots=True)
+class Margins:
+    """What a rule requires of a mode with a damping ratio; `largest` bounds it."""
+
+    of: Callable[[float], Required]
+    largest: float
+    source: str | None = None
+
+
+def rule_of(question: SeparationQuestion) -> Margins:
     """The margins that the rule of the question asks for."""
-    if isinstance(question.rule, FractionRule):
-        return Required(question.rule.mode_above, question.rule.mode_below)
-    return TORSIONAL
+    rule = question.rule
+    if isinstance(rule, FractionRule):
+        fixed = Required(rule.mode_above, rule.mode_below)
+        return Margins(lambda _: fixed, rule.mode_above)
+    if isinstance(rule, AmplificationRule):
+        return Margins(required_by_amplification, 0.27, AMPLIFICATION_SOURCE)
+    return Margins(lambda _: TORSIONAL, TORSIONAL.above, TORSIONAL_SOURCE)
 
 
 def _top(excitation: Excitation, operations: list[Operation]) -> float:
     return max(excitation.band(item.min_rpm, item.max_rpm)[1] for item in operations)
-
-
-def _places(analysed: Analysed, question: SeparationQuestion) -> dict[str, list[int]]:
-    """Per excitation, the rows of the shapes where it acts."""
-    row_of = {name: row for row, name in enumerate(analysed.names)}
-    faults = [
-        Fault(
-            pointer(("forces_at", excitation, index)),
-            f"the system has no degree of freedom '{name}' that can move",
-        )
-        for excitation, names in (question.forces_at or {}).items()
-        for index, name in enumerate(names)
-        if name not in row_of
-    ]
-    if faults:
-        raise Invalid(faults)
-    return {
-        excitation: [row_of[name] for name in names]
-        for excitation, names in (question.forces_at or {}).items()
-    }
-
-
-def _participations(
-    analysed: Analysed, shapes: Floats, places: dict[str, list[int]]
-) -> dict[str, Floats]:
-    return {
-        name: np.asarray(mobility_shares(analysed.pencil, shapes, rows).max(axis=0))
-        for name, rows in places.items()
-    }
 
 
 def _reachable(
@@ -166,20 +115,22 @@ def _distance(frequency: float, low: float, high: float) -> float:
 
 
 def _finding(
-    mode: Candidate, excitation: Excitation, operation: Operation, required: Required
+    mode: Candidate, excitation: Excitation, operation: Operation, rule: Margins
 ) -> dict[str, Any]:
     low, high = excitation.band(operation.min_rpm, operation.max_rpm)
-    kept = margin(mode.frequency, low, high, required)
+    met = mode.meet(excitation, operation.min_rpm, operation.max_rpm)
+    kept = margin(met.frequency, low, high, rule.of(met.damping_ratio))
     if mode.undriven_by(excitation.name):
         verdict = "unexcited"
+    elif rule.source == AMPLIFICATION_SOURCE and kept.required == 0.0:
+        verdict = "clear"  # critically damped: it amplifies nothing
     elif kept.side == "inside":
         verdict = "coincident"
     else:
         verdict = "clear" if kept.is_kept else "short"
-    rpm = coincidence_rpm(mode.frequency, excitation)
     finding: dict[str, Any] = {
         "mode": mode.number,
-        "frequency_hz": mode.frequency,
+        "frequency_hz": met.frequency,
         "excitation": excitation.name,
         "operation": operation.name,
         "excitation_min_hz": low,
@@ -187,11 +138,15 @@ def _finding(
         "margin": kept.margin,
         "required": kept.required,
         "verdict": verdict,
-        "coincidence_rpm": rpm,
+        "coincidence_rpm": met.rpm,
     }
+    if mode.damped:
+        finding["damping_ratio"] = met.damping_ratio
+        ratio = met.damping_ratio
+        finding["amplification_factor"] = 1.0 / (2.0 * ratio) if ratio > 1e-12 else None
     if excitation.name in mode.participation:
         finding["participation"] = mode.participation[excitation.name]
-    finding["reading"] = _sentence(finding, kept, rpm)
+    finding["reading"] = _sentence(finding, kept, met.rpm)
     return finding
 
 
@@ -200,6 +155,9 @@ def _sentence(finding: dict[str, Any], kept: Margin, rpm: float | None) -> str:
     band = _band(finding)
     if finding["verdict"] == "unexcited":
         return f"{mode} isn't driven by {finding['excitation']}, which acts where it doesn't move."
+    if finding["verdict"] == "clear" and kept.required == 0.0 and "damping_ratio" in finding:
+        factor = number(finding["amplification_factor"] or 0.0, 3)
+        return f"{mode} is so damped that {band} isn't amplified (factor {factor}): clear."
     if kept.side == "inside":
         return f"{mode} is met by {band}{_meeting(rpm)}: coincident."
     lies, asked = two_percents(kept.margin, kept.required)
@@ -259,18 +217,20 @@ def _coincidences(
     meetings = []
     for mode in modes:
         for excitation in excitations:
-            rpm = coincidence_rpm(mode.frequency, excitation)
-            if rpm is None or rpm > highest or mode.undriven_by(excitation.name):
+            if mode.undriven_by(excitation.name):
                 continue
-            inside = [o.name for o in operations if o.min_rpm <= rpm <= o.max_rpm]
-            meetings.append(
-                {
-                    "mode": mode.number,
-                    "excitation": excitation.name,
-                    "rpm": rpm,
-                    "operation": inside[0] if inside else None,
-                }
-            )
+            for rpm in mode.meetings(excitation):
+                if rpm > highest:
+                    continue
+                inside = [o.name for o in operations if o.min_rpm <= rpm <= o.max_rpm]
+                meetings.append(
+                    {
+                        "mode": mode.number,
+                        "excitation": excitation.name,
+                        "rpm": rpm,
+                        "operation": inside[0] if inside else None,
+                    }
+                )
     return sorted(meetings, key=lambda meeting: meeting["rpm"])
 
 
@@ -278,18 +238,15 @@ def _clear_speeds(
     modes: list[Candidate],
     excitations: list[Excitation],
     operations: list[Operation],
-    required: Required,
-    findings: list[dict[str, Any]],
+    rule: Margins,
 ) -> list[dict[str, float]]:
     """Speeds of the operation at which all findings, taken at that one speed, are clear."""
-    fixed = {excitation.name for excitation in excitations if excitation.order is None}
-    if any(f["excitation"] in fixed and RANK[f["verdict"]] < RANK["clear"] for f in findings):
-        return []
     closed = [
-        barred(mode.frequency, excitation, required)
+        barred
         for mode in modes
         for excitation in excitations
-        if excitation.order is not None and not mode.undriven_by(excitation.name)
+        if not mode.undriven_by(excitation.name)
+        for barred in mode.barred(excitation, rule.of)
     ]
     return [
         {"min_rpm": low, "max_rpm": high}
@@ -310,7 +267,7 @@ def _merged(operations: list[Operation]) -> list[tuple[float, float]]:
 
 
 def _warnings(
-    findings: list[dict[str, Any]], excitations: list[Excitation], required: Required
+    findings: list[dict[str, Any]], excitations: list[Excitation], rule: Margins
 ) -> list[str]:
     fixed = {excitation.name for excitation in excitations if excitation.order is None}
     at_fault = dict.fromkeys(
@@ -321,11 +278,14 @@ def _warnings(
     warnings = []
     if at_fault:
         warnings.append(
-            "no speed is clear, because an excitation of fixed frequency isn't: "
+            "changing the speed doesn't clear an excitation of fixed frequency: "
             f"{listed(list(at_fault))}."
         )
-    if required.above == 0.0 or required.below == 0.0:
+    asked = rule.of(0.0)
+    if asked.above == 0.0 or asked.below == 0.0:
         warnings.append("the rule asks for no margin on one side, so only a coincidence is short.")
+    if rule.source is not None:
+        warnings.append(f"margins required by {rule.source}.")
     if not findings:
         warnings.append("the system has no oscillating mode.")
     return warnings

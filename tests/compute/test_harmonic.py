@@ -47,7 +47,9 @@ def direct(Z: NDArray[np.complex128], f: Floats) -> NDArray[np.complex128]:
         return np.array([complex(value) for value in found])
 
 
-def response(found: Responder, f: Floats, omega: Floats, rpm: float = 0.0) -> NDArray[np.complex128]:
+def response(
+    found: Responder, f: Floats, omega: Floats, rpm: float = 0.0
+) -> NDArray[np.complex128]:
     load = Load((0,), f[None].astype(complex)).onto(found.machine.B)
     q = found.coordinates(load, omega, np.full(len(omega), rpm))
     return np.asarray(q @ found.machine.B.T)

@@ -1,5 +1,7 @@
 """Motion over time against general integrators and the matrix exponential."""
 
+from itertools import pairwise
+
 import numpy as np
 import pytest
 from numpy.typing import NDArray
@@ -94,7 +96,7 @@ def test_a_piecewise_linear_force_agrees_with_a_general_integrator(
     state = np.zeros(8)
     ends = [*corners, 0.6]
     expected = np.zeros((8, len(times)))
-    for first, last in zip(ends[:-1], ends[1:], strict=True):
+    for first, last in pairwise(ends):
         inside = (times >= first) & (times < last)
         run = solve_ivp(rate, (first, last), state, "DOP853", np.append(times[inside], last),
                         rtol=1e-12, atol=1e-15)  # fmt: skip

@@ -334,9 +334,11 @@ def test_a_run_up_integrates_its_phase() -> None:
     with mpmath.workdps(30):
         grid = mpmath.linspace(0, 3, 25)
         expected = mpmath.quad(
-            lambda t: mpmath.mpf("0.005")
-            * (2 * mpmath.pi * (1 + 9 * t / 4)) ** 2
-            * mpmath.sin(2 * mpmath.pi * (t + 9 * t * t / 8)),
+            lambda t: (
+                mpmath.mpf("0.005")
+                * (2 * mpmath.pi * (1 + 9 * t / 4)) ** 2
+                * mpmath.sin(2 * mpmath.pi * (t + 9 * t * t / 8))
+            ),
             grid,
         )
     assert velocity["series"][0]["values"][12] == pytest.approx(float(expected), abs=1e-10)
