@@ -18,9 +18,10 @@ from scipy.sparse.linalg import splu
 from threadpoolctl import threadpool_limits
 
 from service.compute.constraints import Ties
+from service.compute.couplings import couplings_of_sparse, touched_by
 from service.compute.damped_system import Damping
 from service.compute.harmonic import Load, responder
-from service.compute.normal_coordinates import couplings_of_sparse, diagonal_machine, touched_by
+from service.compute.normal_coordinates import diagonal_machine
 from service.compute.real_modes import Wanted
 from service.compute.reduced import REACH, reduced
 from service.compute.sparse_modes import SparsePencil, sparse_modes

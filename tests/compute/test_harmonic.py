@@ -5,11 +5,11 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
+from service.compute.couplings import couplings_of_matrices
 from service.compute.damped_system import Damping
 from service.compute.harmonic import DIRECT, STATES, SUM, UPDATE, Load, Responder, responder
 from service.compute.normal_coordinates import (
     NormalCoordinates,
-    couplings_of_matrices,
     normal_coordinates,
 )
 from service.compute.pencil import pencil_of_matrices

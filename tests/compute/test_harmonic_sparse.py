@@ -8,9 +8,10 @@ from scipy.sparse import csc_array, diags_array, eye_array, kron
 from scipy.sparse.linalg import spsolve
 
 from service.compute.constraints import Ties
+from service.compute.couplings import couplings_of_sparse, touched_by
 from service.compute.damped_system import Damping
 from service.compute.harmonic import Load, responder
-from service.compute.normal_coordinates import couplings_of_sparse, diagonal_machine, touched_by
+from service.compute.normal_coordinates import diagonal_machine
 from service.compute.real_modes import Wanted
 from service.compute.reduced import REACH, reduced
 from service.compute.sparse_modes import SparsePencil, sparse_modes

@@ -204,10 +204,9 @@ def test_a_grade_without_a_service_speed_takes_the_highest_speed_asked_for() -> 
 
 @pytest.mark.parametrize("ratio", [0.25, 0.5, 0.8])
 def test_the_shock_spectrum_of_a_half_sine_has_its_closed_form(ratio: float) -> None:
-    """Undamped, pulse shorter than half a period (ratio = 2·duration/period < 1): the largest
-    response comes after the pulse, 2·ratio·cos(π/(2·…))-form A = 2r/(1 − r²)·cos(π/(2·1/r)) with
-    r = T/(2·duration) read the other way round; Harris, Shock and Vibration Handbook, pulses
-    (from memory), re-derived."""
+    """Undamped, a pulse shorter than half a period, ratio = 2·duration/period < 1: the largest
+    response comes after it, A = 2r/(r² − 1)·cos(π/(2r)) with r = 1/ratio; Harris, Shock and
+    Vibration Handbook, response to pulses (from memory), re-derived."""
     duration, peak = 0.01, 50.0
     hz = ratio / (2 * duration)
     answer = ask(

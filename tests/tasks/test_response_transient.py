@@ -286,6 +286,8 @@ RUN: Raw = {"duration_s": 1.0, "time_step_s": 0.1}
         ({**RUN, "forces": [{**STEP, "from_rpm": 3}]}, {"/forces/0/from_rpm"}),
         ({**RUN, "forces": [{"at": "a/x", "shape": "chirp", "peak": 1, "duration_s": 1}]},
          {"/forces/0/from_rpm"}),
+        ({**RUN, "forces": [{"at": "a/x", "shape": "chirp", "peak": 1, "duration_s": 1e9,
+                             "from_rpm": 0, "to_rpm": 1e18}]}, {"/forces/0/to_rpm"}),
         ({**RUN, "initial": {"displacement": {"a/x": 0.1}}}, {"/initial/displacement/a~1x"}),
         ({**RUN, "initial": {"displacement": {"c/x": 0.1}}}, {"/initial/displacement/c~1x"}),
         ({**RUN, "base": {"motion": "x", "time_s": [0, 1], "displacement": [0, 1],
