@@ -51,13 +51,14 @@ def _instance(folder: Path) -> Iterator[str]:
             address = server.stdout.readline().split()[-1:]
             if not address:
                 raise ValueError("the private instance didn't start")
-            _await_ready(address[0])
+            await_ready(address[0])
             yield address[0]
         finally:
             server.terminate()
 
 
-def _await_ready(address: str) -> None:
+def await_ready(address: str) -> None:
+    """Return when the service at `address` is ready; ValueError where it takes too long."""
     end = time.monotonic() + START_SECONDS
     with httpx.Client(base_url=address, trust_env=False) as client:
         while time.monotonic() < end:

@@ -15,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.compute.assembly import Matrix
+from service.compute.couplings import Complexes
 from service.compute.machine import (
     GROUND,
     Bearing,
@@ -24,7 +25,6 @@ from service.compute.machine import (
     Spring,
     Vector,
 )
-from service.compute.normal_coordinates import Complexes
 from service.compute.space_machine import SpaceMachine
 
 

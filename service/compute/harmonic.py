@@ -17,8 +17,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from service.compute.couplings import Complexes
 from service.compute.machine import Floats
-from service.compute.normal_coordinates import Complexes, NormalCoordinates
+from service.compute.normal_coordinates import NormalCoordinates
 from service.compute.state_space import StateSpace, state_space
 
 LOW_RANK = 0.3  # of the coordinates: with more rows than this the update saves nothing

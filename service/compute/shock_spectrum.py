@@ -9,8 +9,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from service.compute.couplings import Complexes
 from service.compute.machine import Floats
-from service.compute.normal_coordinates import Complexes
 from service.compute.signals import Signal, driven
 
 PER_PERIOD = 16  # points on which peaks are sought first

@@ -13,8 +13,8 @@ from math import comb, factorial
 import numpy as np
 from scipy.signal import lfilter
 
+from service.compute.couplings import Complexes
 from service.compute.machine import Floats, Integers
-from service.compute.normal_coordinates import Complexes
 
 SMOOTH_DEGREE, SMOOTH_ANGLE = 9, 0.45  # degree, and radians of phase on each segment
 SAME_TIME = 1e-9  # of a step: times closer than this are one

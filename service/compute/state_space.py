@@ -14,8 +14,9 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.sparse import csr_array
 
+from service.compute.couplings import Complexes
 from service.compute.machine import Floats
-from service.compute.normal_coordinates import Complexes, NormalCoordinates
+from service.compute.normal_coordinates import NormalCoordinates
 from service.compute.pencil import EPS
 
 Map: TypeAlias = Any  # an ndarray, or a scipy.sparse array where nothing couples

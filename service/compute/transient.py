@@ -9,8 +9,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from service.compute.couplings import Complexes
 from service.compute.machine import Floats
-from service.compute.normal_coordinates import Complexes, NormalCoordinates
+from service.compute.normal_coordinates import NormalCoordinates
 from service.compute.signals import Signal, driven, twice_integrated
 from service.compute.state_space import StateSpace
 

@@ -98,6 +98,10 @@ def _post_system() -> Document:
     example = next(iter(TASKS.values())).example["system"]
     created = _json(SystemSummary, _stored_example())
     created["description"] = "The system is stored; Location says where."
+    faults: Document = {
+        "description": "With `?problems=table`: the faults as a table.",
+        "content": {"text/csv": {"schema": {"type": "string"}}},
+    }
     return {
         "summary": "Store a system",
         "description": "Every task can then ask about it by its id.",
@@ -111,7 +115,7 @@ def _post_system() -> Document:
                 }
             },
         },
-        "responses": {"201": created, **_problems(413, 415, 422)},
+        "responses": {"200": faults, "201": created, **_problems(413, 415, 422)},
     }
 
 
@@ -181,10 +185,11 @@ def _other_forms() -> Document:
 
 
 def _json(model: type[BaseModel], example: Any) -> Document:
+    """The object, or with `?problems=table` the table of its faults."""
     content: Document = {"schema": _reference(model)}
     if example is not None:
         content["example"] = example
-    return {"content": {"application/json": content}}
+    return {"content": {"application/json": content, "text/csv": {"schema": {"type": "string"}}}}
 
 
 def _reference(model: type[BaseModel]) -> Document:

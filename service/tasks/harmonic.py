@@ -9,18 +9,19 @@ import numpy as np
 from schemas.faults import Fault, Invalid, pointer
 from schemas.response.harmonic import HarmonicQuestion
 from schemas.system import AnySystem
+from service.compute.couplings import Complexes
 from service.compute.harmonic import responder
 from service.compute.machine import Floats
-from service.compute.normal_coordinates import Complexes
 from service.compute.peaks import Peak, peaks, resolved, too_coarse
 from service.compute.resonances import crossings, resonances
 from service.compute.thinning import kept_points
-from service.tasks.dynamics import ORDERS, Dynamics, corrected, dynamics_of, unknown
+from service.tasks.dynamics import Dynamics, corrected, dynamics_of, unknown
 from service.tasks.harmonic_evidence import evidence
 from service.tasks.modes import CAUTION
 from service.tasks.readings import number
 from service.tasks.severity import zone
 from service.tasks.steady import Steady, places_of
+from service.tasks.view import ORDERS
 from service.tasks.wary import geometry_warnings
 
 MOST_PEAKS = 200

@@ -4,9 +4,12 @@ from math import pi
 
 import numpy as np
 
+from schemas.faults import Fault, Invalid
 from schemas.response.inputs import BaseInput, ForceInput
 from service.compute.machine import Floats
 from service.compute.signals import Signal, constant, samples, smooth
+
+MOST_TURNS = 50_000
 
 
 def force_signal(item: ForceInput, end: float) -> Signal | None:
@@ -15,7 +18,7 @@ def force_signal(item: ForceInput, end: float) -> Signal | None:
         values = item.force if item.force is not None else item.moment
         return samples(np.array(item.time_s), np.array(values))
     if item.mass_eccentricity is not None:
-        return _chirp(item, item.mass_eccentricity, grows=True) if item.start_s < end else None
+        return _chirp(item, item.mass_eccentricity, end, grows=True) if item.start_s < end else None
     return _shape(item, item.peak or 0.0, end)
 
 
@@ -48,11 +51,17 @@ def _shape(item: ForceInput | BaseInput, peak: float, end: float) -> Signal | No
     if item.shape == "ramp":
         rising = samples(np.array([start, start + lasting]), np.array([0.0, peak]))
         return rising.held_until(end)
-    return _chirp(item, peak, grows=False)
+    return _chirp(item, peak, end, grows=False)
 
 
-def _chirp(item: ForceInput | BaseInput, size: float, grows: bool) -> Signal:
-    """size·sin φ, or with an unbalance size·φ′²·sin φ; the phase φ is the integral of the speed."""
+def _chirp(item: ForceInput | BaseInput, size: float, end: float, grows: bool) -> Signal:
+    """size·sin φ, or with an unbalance size·φ′²·sin φ; the phase φ is the integral of the speed.
+
+    Raises
+    ------
+    Invalid
+        More cycles than are followed; the pointer starts at the input.
+    """
     assert item.duration_s is not None
     start, lasting = item.start_s, item.duration_s
     first, last = (item.order * (rpm or 0.0) * pi / 30.0 for rpm in (item.from_rpm, item.to_rpm))
@@ -65,4 +74,7 @@ def _chirp(item: ForceInput | BaseInput, size: float, grows: bool) -> Signal:
         return sine * (first + gain * passed) ** 2 if grows else sine
 
     turning = max(first, last, 2 * pi / lasting)
-    return smooth(wave, start, start + lasting, turning)
+    stop = min(start + lasting, end)
+    if turning * (stop - start) > 2 * pi * MOST_TURNS:
+        raise Invalid([Fault("/to_rpm", f"more than {MOST_TURNS:,} cycles: follow a shorter part")])
+    return smooth(wave, start, stop, turning)

@@ -11,8 +11,9 @@ from service.compute.machine import Floats
 from service.compute.signals import Signal
 from service.compute.state_space import StateSpace, state_space
 from service.compute.transient import Course, Input, course
-from service.tasks.dynamics import ORDERS, Dynamics, Moving, View, unknown, view_of
+from service.tasks.dynamics import Dynamics, unknown
 from service.tasks.inputs import base_quantity, base_signal, force_signal
+from service.tasks.view import ORDERS, Moving, View, view_of
 
 LARGEST_GROWTH = 300.0  # e-folds: squares still fit a double
 AS_GIVEN = 1e-9  # of the largest: an initial displacement that the machine can take
@@ -127,8 +128,11 @@ def _check_places(dynamics: Dynamics, question: TransientQuestion) -> None:
 
 def _forces(dynamics: Dynamics, question: TransientQuestion) -> list[tuple[Signal, Floats]]:
     pushes = []
-    for item in question.forces or []:
-        signal = force_signal(item, question.duration_s)
+    for index, item in enumerate(question.forces or []):
+        try:
+            signal = force_signal(item, question.duration_s)
+        except Invalid as fault:
+            raise fault.under(pointer(("forces", index))) from None
         if signal is not None:
             vector = np.zeros(len(dynamics.analysed.names))
             vector[dynamics.place[item.at]] = 1.0
@@ -149,7 +153,10 @@ def _kinematics(
     assert question.base is not None
     item = question.base[index]
     end = question.duration_s
-    signal = base_signal(item, end)
+    try:
+        signal = base_signal(item, end)
+    except Invalid as fault:
+        raise fault.under(pointer(("base", index))) from None
     if signal is None:
         return None
     quantity = base_quantity(item)

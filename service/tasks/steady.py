@@ -8,11 +8,12 @@ import numpy as np
 
 from schemas.faults import pointer
 from schemas.response.harmonic import HarmonicExcitation, HarmonicQuestion
+from service.compute.couplings import Complexes
 from service.compute.harmonic import Load, Responder
 from service.compute.machine import Floats
-from service.compute.normal_coordinates import Complexes
 from service.compute.sparse_modes import SparsePencil
-from service.tasks.dynamics import ORDERS, Dynamics, Moving, view_of
+from service.tasks.dynamics import Dynamics
+from service.tasks.view import ORDERS, Moving, view_of
 
 
 @dataclass(frozen=True, slots=True)

@@ -13,13 +13,14 @@ from service.compute.shock_spectrum import shock_spectrum
 from service.compute.thinning import kept_points
 from service.compute.transient import largest, terms
 from service.tasks.damping import speed_matters
-from service.tasks.dynamics import dynamics_of, view_of
+from service.tasks.dynamics import dynamics_of
 from service.tasks.inputs import base_quantity, base_signal
 from service.tasks.modes import CAUTION
 from service.tasks.readings import number
 from service.tasks.run import Run, run_of
 from service.tasks.severity import zone
 from service.tasks.transient_evidence import evidence
+from service.tasks.view import view_of
 from service.tasks.wary import geometry_warnings
 
 CLOSER, ROUNDS = 33, 2  # points around the largest value of a series, so many times over
