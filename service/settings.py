@@ -18,7 +18,7 @@ class Settings:
     store: str = _knob("sqlite:///wideberth.db", "where systems and answers are kept")
     workers: int = _knob(1, "server processes on the same store")
     max_body_bytes: int = _knob(8_388_608, "largest request body")
-    max_degrees_of_freedom: int = _knob(2_000, "largest system that is computed")
+    max_degrees_of_freedom: int = _knob(200_000, "largest system that is computed")
     cache_bytes: int = _knob(67_108_864, "answers kept ready in the memory of each process")
 
     @classmethod

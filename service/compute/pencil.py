@@ -169,7 +169,7 @@ def _cholesky(M: Floats) -> Floats | None:
     if np.count_nonzero(M) == len(M):
         return np.diag(np.sqrt(diagonal))
     L: Floats
-    L, info = lapack.dpotrf(M, lower=1, clean=1)
+    L, info = lapack.dpotrf(M.T, lower=1, clean=1)
     if info or (L.diagonal() ** 2 <= 8 * len(M) * EPS * diagonal).any():
         return None
     return L

@@ -262,7 +262,8 @@ def _checked(pencil: SparsePencil, values: Floats, shapes: Floats) -> Modes:
         cut=False,
         residual=float(residual.max(initial=0.0)),
         cross=float(np.abs(cross).max(initial=0.0)),
-        method="shift-invert Lanczos on a sparse minimum-degree factorization",
+        method="shift-invert Lanczos on a sparse minimum-degree factorization; count by the "
+        "inertia of another one",
     )
 
 

@@ -1,8 +1,10 @@
 """Reading a request: its body within the limit, its media type, its parameters."""
 
+import zlib
 from collections.abc import Collection, Mapping
 from typing import Any
 
+import zstandard
 from starlette.requests import Request
 
 from schemas.faults import Fault, Malformed
@@ -11,7 +13,7 @@ from service import failures
 
 
 async def body_of(request: Request, limit: int) -> bytes:
-    """The body, refused as soon as it passes `limit` bytes."""
+    """The body, inflated where it is compressed, refused as soon as it passes `limit` bytes."""
     announced = request.headers.get("content-length", "")
     if announced.isascii() and announced.isdigit() and int(announced) > limit:
         raise _too_large(limit)
@@ -22,7 +24,40 @@ async def body_of(request: Request, limit: int) -> bytes:
         if size > limit:
             raise _too_large(limit)
         parts.append(part)
-    return parts[0] if len(parts) == 1 else b"".join(parts)
+    body = parts[0] if len(parts) == 1 else b"".join(parts)
+    coding = request.headers.get("content-encoding")
+    return body if coding is None else _inflated(body, coding.strip().lower(), limit)
+
+
+def _inflated(body: bytes, coding: str, limit: int) -> bytes:
+    """The body without its compression.
+
+    Raises
+    ------
+    failures.UnsupportedMedia, failures.Malformed, failures.TooLarge
+    """
+    if coding == "identity":
+        return body
+    if coding not in ("gzip", "zstd"):
+        raise failures.UnsupportedMedia(
+            f"The coding '{coding[:32]}' can't be read: gzip or zstd is expected.",
+            headers={"Accept-Encoding": "gzip, zstd"},
+        )
+    try:
+        if coding == "gzip":
+            inflater = zlib.decompressobj(wbits=31)
+            plain = inflater.decompress(body, limit + 1)
+            whole = inflater.eof or len(plain) > limit
+        else:
+            reader = zstandard.ZstdDecompressor(max_window_size=2**27).stream_reader(body)
+            plain, whole = reader.read(limit + 1), True
+    except (zlib.error, zstandard.ZstdError):
+        plain, whole = b"", False
+    if not whole:
+        raise failures.Malformed("The body can't be read.", [Fault("", f"isn't whole {coding}")])
+    if len(plain) > limit:
+        raise _too_large(limit)
+    return plain
 
 
 def _too_large(limit: int) -> failures.TooLarge:

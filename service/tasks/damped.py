@@ -27,7 +27,7 @@ from service.tasks.modes import (
     undamped_modes,
 )
 from service.tasks.readings import mode_readings, number, percent
-from service.tasks.wary import geometry_warnings
+from service.tasks.wary import geometry_warnings, mesh_warnings
 
 PROJECTED_FROM = 400  # independent motions: above, the problem is projected on undamped modes
 PROJECTED_ON = 120
@@ -233,6 +233,8 @@ def _warnings(
         for v, b in zip(solved.modes.values, solved.modes.bounds, strict=True)
     ):
         warnings.append("the machine is unstable: some modes grow instead of dying out.")
+    highest = float(np.abs(solved.modes.values[chosen]).max(initial=0.0)) / (2 * pi)
+    warnings += mesh_warnings(system, highest)
     defective = _nearly_defective(solved, chosen)
     if defective:
         warnings.append(

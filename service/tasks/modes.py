@@ -48,7 +48,7 @@ def undamped_modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]
         "modes": mode_list(analysed, found, question.shape_scale, rows),
         "warnings": [
             *system_warnings(system, analysed, found),
-            *modes_warnings(analysed, found, question),
+            *modes_warnings(system, analysed, found, question),
         ],
         "evidence": evidence(found),
         "caution": CAUTION,
@@ -227,7 +227,7 @@ def _largest(kind: str, names: tuple[str, ...], shares: Floats) -> list[dict[str
 def evidence(found: Modes) -> dict[str, Any]:
     """What the modes rest on."""
     return {
-        "method": f"{found.method}; count by the inertia of a Bunch–Kaufman factorization",
+        "method": found.method,
         "sturm_count": found.found,
         "sturm_below_hz": hertz(found.below) if found.below > 0.0 else -hertz(found.below),
         "modes_returned": len(found.values),

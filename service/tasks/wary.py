@@ -1,10 +1,18 @@
 """What a careful engineer would question: the warnings of an answer."""
 
-from schemas.connections import Damper, Spring
+from math import dist, pi
+
+from schemas.connections import Beam, Damper, Link, Pad, Shaft, Spring
+from schemas.materials import MATERIALS
 from schemas.modes import ModesQuestion
 from schemas.system import AnySystem, BodiesSystem, InertiaTensor, MatricesSystem
+from service.compute.beams import bending_half_wave
+from service.compute.half_space import SOURCE
 from service.compute.real_modes import Modes
 from service.tasks.machines import Analysed
+from service.tasks.translation import machine_of
+
+LEAST_ELEMENTS = 3  # for half a bending wave: below, a frequency may be off by a tenth of a percent
 
 
 def system_warnings(system: AnySystem, analysed: Analysed, found: Modes) -> list[str]:
@@ -41,7 +49,7 @@ def geometry_warnings(system: AnySystem, analysed: Analysed, rigid: int) -> list
             f"{_few(analysed.pencil.ties.locking)} together with other ties hold a motion still."
         )
     if isinstance(system, BodiesSystem):
-        warnings += _of_bodies(system, analysed)
+        warnings += _of_bodies(system, analysed) + _sources(system) + _pads_under(system)
     return warnings
 
 
@@ -72,6 +80,69 @@ def _of_bodies(system: BodiesSystem, analysed: Analysed) -> list[str]:
     return warnings
 
 
+def _sources(system: BodiesSystem) -> list[str]:
+    """Where constants come from that the caller didn't give."""
+    pads = [part.name for part in system.connections if isinstance(part, Pad)]
+    warnings = [f"{_few(pads)}: constants by {SOURCE}."] if pads else []
+    names = dict.fromkeys(
+        str(material)
+        for part in system.connections
+        for material in (
+            [part.material]
+            if isinstance(part, Beam)
+            else [section.material for section in part.sections or ()]
+            if isinstance(part, Shaft)
+            else []
+        )
+        if material is not None
+    )
+    return warnings + [
+        f"values of {name} from the service's table: {MATERIALS[name].source} (from memory)."
+        for name in names
+    ]
+
+
+def _pads_under(system: BodiesSystem) -> list[str]:
+    """A pad counts only the body on it into its rocking and twisting damping."""
+    carrying = [
+        part.name
+        for part in system.connections
+        if isinstance(part, Pad)
+        and any(
+            isinstance(other, Link | Spring | Beam)
+            and set(part.between) & set(other.between) - {"ground"}
+            for other in system.connections
+        )
+    ]
+    if not carrying:
+        return []
+    return [
+        f"{_few(carrying)}: damping in rocking and twist counts the inertia of the body on the pad "
+        "alone, not of what stands on that."
+    ]
+
+
+def mesh_warnings(system: AnySystem, highest_hz: float) -> list[str]:
+    """Beams whose elements are long beside half a bending wave of the highest mode."""
+    if not isinstance(system, BodiesSystem) or highest_hz <= 0.0:
+        return []
+    if not any(isinstance(part, Beam) for part in system.connections):
+        return []
+    machine = machine_of(system)
+    coarse = []
+    for beam in machine.beams:
+        first, second = (machine.bodies[end].at for end in beam.ends)
+        length = dist(first, second) / beam.elements
+        if bending_half_wave(beam.section, highest_hz) < LEAST_ELEMENTS * length:
+            coarse.append(beam.name)
+    if not coarse:
+        return []
+    return [
+        f"fewer than {LEAST_ELEMENTS} elements for half a bending wave at {highest_hz:.4g} Hz, the "
+        f"highest mode listed: {_few(coarse)}; raise `elements`."
+    ]
+
+
 def _is_impossible(inertia: object) -> bool:
     """The triangle inequality of moments of inertia, where all three are given."""
     if not isinstance(inertia, InertiaTensor) or not (inertia.xx and inertia.yy and inertia.zz):
@@ -80,7 +151,9 @@ def _is_impossible(inertia: object) -> bool:
     return moments[2] > (moments[0] + moments[1]) * (1 + 1e-9)
 
 
-def modes_warnings(analysed: Analysed, found: Modes, question: ModesQuestion) -> list[str]:
+def modes_warnings(
+    system: AnySystem, analysed: Analysed, found: Modes, question: ModesQuestion
+) -> list[str]:
     """On the modes found."""
     warnings = []
     returned, size = len(found.values), analysed.pencil.size
@@ -90,7 +163,8 @@ def modes_warnings(analysed: Analysed, found: Modes, question: ModesQuestion) ->
         )
     if question.count is not None and question.count > size:
         warnings.append(f"the system has only {size} modes.")
-    return warnings + solution_warnings(found)
+    highest = float(found.values.max(initial=0.0)) ** 0.5 / (2 * pi)
+    return warnings + mesh_warnings(system, highest) + solution_warnings(found)
 
 
 def solution_warnings(found: Modes) -> list[str]:
