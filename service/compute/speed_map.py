@@ -110,12 +110,24 @@ def turning(values: Floats, shapes: Floats, damping: Damping, rpm: float) -> Tur
 
 @dataclass(frozen=True, slots=True)
 class Station:
-    """All roots at one speed: right vectors X and left vectors Y of the state, YᴴX = 1."""
+    """The roots of the upper half plane and the real ones at one speed, by size.
+
+    `X` holds their unit right vectors, `everything` those of all roots, of which `upper` are shown.
+    """
 
     rpm: float
     roots: Complexes
     X: Complexes
-    Y: Complexes
+    everything: Complexes
+    upper: Integers
+
+    def left(self) -> Complexes:
+        """Left vectors Y with YᴴX = 1."""
+        try:
+            inverse = np.linalg.inv(self.everything)
+        except np.linalg.LinAlgError:
+            inverse = np.linalg.pinv(self.everything)
+        return inverse.conj().T[:, self.upper]
 
 
 @dataclass(frozen=True, slots=True)
@@ -139,16 +151,12 @@ class Map:
 
 
 def station(problem: Turning, rpm: float) -> Station:
-    """The roots of the upper half plane and the real ones, by size, at one speed."""
+    """Solve the problem at one speed."""
     roots, X = np.linalg.eig(problem.matrix(rpm))
     size = np.abs(roots)
     upper = np.flatnonzero(roots.imag >= -1e-13 * size)
     upper = upper[np.argsort(size[upper], kind="stable")]
-    try:
-        Y = np.linalg.inv(X).conj().T
-    except np.linalg.LinAlgError:
-        Y = np.linalg.pinv(X).conj().T
-    return Station(rpm, roots[upper], X[:, upper], Y[:, upper])
+    return Station(rpm, roots[upper], X[:, upper], X, upper)
 
 
 def follow(problem: Turning, speeds: Floats, count: int) -> Map:
@@ -174,7 +182,7 @@ def _step(
 ) -> tuple[Integers, Floats, int]:
     """Which roots `there` continue the `chosen` ones, how alike their shapes are, speeds added."""
     pairing, alike = _paired(here, there)
-    pairing = _unpassed(problem, here, there, pairing)
+    pairing = _unpassed(problem, here, there, pairing, chosen)
     if alike[chosen].min(initial=1.0) >= ALIKE or depth == MOST_HALVINGS:
         return pairing[chosen], alike[chosen], 0
     middle = station(problem, (here.rpm + there.rpm) / 2)
@@ -184,8 +192,11 @@ def _step(
 
 
 def _paired(here: Station, there: Station) -> tuple[Integers, Floats]:
-    """For each root here the one there, by correlation of states and nearness of roots."""
-    correlation = np.abs(here.Y.conj().T @ there.X) * np.abs(there.Y.conj().T @ here.X).T
+    """For each root here the one there, by correlation of states and nearness of roots.
+
+    The scaled state (Ση, η′) makes the plain inner product one of energy.
+    """
+    correlation = np.abs(here.X.conj().T @ there.X) ** 2
     distance = np.abs(here.roots[:, None] - there.roots)
     near = distance / (np.abs(here.roots)[:, None] + np.abs(there.roots))
     rows, columns = linear_sum_assignment(near - np.minimum(correlation, 1.0))
@@ -201,30 +212,28 @@ def _paired(here: Station, there: Station) -> tuple[Integers, Floats]:
     return pairing, alike
 
 
-def _unpassed(problem: Turning, here: Station, there: Station, pairing: Integers) -> Integers:
+def _unpassed(
+    problem: Turning, here: Station, there: Station, pairing: Integers, chosen: Integers
+) -> Integers:
     """Exchange the pairs that seem to pass each other where in truth they veer."""
     before, after = here.roots.imag, there.roots.imag[pairing]
-    order = np.argsort(before, kind="stable")
-    passed = [
-        (int(i), int(j))
-        for place, i in enumerate(order)
-        for j in order[place + 1 :]
-        if before[i] < before[j] and after[i] > after[j]
-    ]
-    if not passed:
+    passed = (before[:, None] < before) & (after[:, None] > after)
+    followed = np.isin(np.arange(len(before)), chosen)
+    pairs = np.argwhere(passed & (followed[:, None] | followed)).tolist()
+    if not pairs:
         return pairing
     change = problem.matrix(there.rpm) - problem.matrix(here.rpm)
-    result = pairing.copy()
-    for i, j in passed:
-        if _veers(here, change, i, j):
+    Y, result = here.left(), pairing.copy()
+    for i, j in sorted(pairs, key=lambda pair: float(before[pair[1]] - before[pair[0]])):
+        if _veers(here, Y, change, i, j):
             result[i], result[j] = result[j], result[i]
     return result
 
 
-def _veers(here: Station, change: Floats | Complexes, i: int, j: int) -> bool:
+def _veers(here: Station, Y: Complexes, change: Floats | Complexes, i: int, j: int) -> bool:
     """Whether two roots, followed through a step in their common space, keep their order."""
     both = [i, j]
-    B = here.Y[:, both].conj().T @ change @ here.X[:, both]
+    B = Y[:, both].conj().T @ change @ here.X[:, both]
     share = np.linspace(0.0, 1.0, PATH_POINTS)
     difference = here.roots[i] - here.roots[j] + share * (B[0, 0] - B[1, 1])
     coupling = 4.0 * share**2 * B[0, 1] * B[1, 0]

@@ -1,12 +1,15 @@
 """Answers and problems over HTTP, as a caller sees them."""
 
 import csv
+import gzip
 import json
 from io import StringIO
+from pathlib import Path
 from typing import Any
 
 import httpx
 import pytest
+import zstandard
 
 from service.tasks import TASKS
 
@@ -233,3 +236,31 @@ def test_the_example_of_a_task_works_and_every_form_of_its_answer(
         other = client.get(reply.headers["Content-Location"], params={"format": form})
         assert other.status_code == 200
         assert other.text
+
+
+@pytest.mark.parametrize("coding", ["gzip", "zstd"])
+def test_a_compressed_body_is_read_within_the_limit(client: httpx.Client, coding: str) -> None:
+    def packed(data: bytes) -> bytes:
+        return gzip.compress(data) if coding == "gzip" else zstandard.compress(data)
+
+    headers = {"Content-Type": "application/json", "Content-Encoding": coding}
+    body = json.dumps({"system": fresh(f"packed {coding}")}).encode()
+    assert client.post("/v1/modes", content=packed(body), headers=headers).status_code == 200
+    bomb = packed(b" " * 20_000_000)
+    assert client.post("/v1/modes", content=bomb, headers=headers).status_code == 413
+    broken = packed(body)[:-9]
+    assert client.post("/v1/modes", content=broken, headers=headers).status_code == 400
+    headers["Content-Encoding"] = "br"
+    assert client.post("/v1/modes", content=body, headers=headers).status_code == 415
+
+
+EXAMPLES = sorted((Path(__file__).parents[2] / "deploy" / "examples").glob("*.json"))
+
+
+@pytest.mark.parametrize("path", EXAMPLES, ids=[path.stem for path in EXAMPLES])
+def test_every_example_machine_is_answered(client: httpx.Client, path: Path) -> None:
+    body = json.loads(path.read_text(encoding="utf-8"))
+    task = "separation" if "operation" in body else "modes"
+    reply = client.post(f"/v1/{task}", json=body)
+    assert reply.status_code == 200, reply.text
+    assert reply.json()["evidence"]["complete"] is True
