@@ -7,10 +7,15 @@ from typing import Self
 
 @dataclass(frozen=True)
 class Fault:
-    """One fault: an RFC 6901 pointer into what was posted, and a sentence about it."""
+    """One fault: an RFC 6901 pointer into what was posted, and a sentence about it.
+
+    In a sheet also the row and the column, both counted from 1.
+    """
 
     pointer: str
     detail: str
+    row: int | None = None
+    column: int | None = None
 
 
 class Faulty(ValueError):
@@ -31,7 +36,7 @@ class Faulty(ValueError):
 
 
 class Malformed(Faulty):
-    """The body isn't well-formed JSON."""
+    """The body isn't well-formed JSON, or not a sheet."""
 
 
 class Invalid(Faulty):

@@ -10,6 +10,10 @@ class FaultAt(Answer):
     """Where: an RFC 6901 pointer into what was posted."""
     detail: str
     """What is wrong there."""
+    row: int | None = None
+    """In a sheet: the row, from 1 (no unit)."""
+    column: int | None = None
+    """In a sheet: the column, from 1 (no unit)."""
 
 
 class Problem(Answer):

@@ -67,9 +67,7 @@ class Failure(Exception):
             "instance": instance,
         }
         if self.faults:
-            document["errors"] = [
-                {"pointer": fault.pointer, "detail": fault.detail} for fault in self.listed()
-            ]
+            document["errors"] = [_error(fault) for fault in self.listed()]
         return document
 
     def listed(self) -> list[Fault]:
@@ -78,6 +76,13 @@ class Failure(Exception):
         if more <= 0:
             return self.faults
         return [*self.faults[:MOST_FAULTS], Fault("", f"and {more} more faults")]
+
+
+def _error(fault: Fault) -> dict[str, object]:
+    error: dict[str, object] = {"pointer": fault.pointer, "detail": fault.detail}
+    if fault.row is not None:
+        error |= {"row": fault.row, "column": fault.column}
+    return error
 
 
 class Malformed(Failure):

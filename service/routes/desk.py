@@ -138,11 +138,10 @@ class Desk:
         except Invalid as fault:
             raise invalid(fault) from None
 
-    async def keep_system(self, raw: Any) -> dict[str, Any]:
+    async def keep_system(self, system: AnySystem) -> dict[str, Any]:
         """Check and store a system; its id and summary."""
+        self.check_size(system, "")
         try:
-            system = read_system(raw)
-            self.check_size(system, "")
             summary = await compute(degrees_of_freedom(system), lambda: summarize(system))
         except Invalid as fault:
             raise invalid(fault) from None

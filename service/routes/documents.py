@@ -9,6 +9,7 @@ from pydantic.json_schema import models_json_schema
 
 from schemas.problem import Problem
 from schemas.reading import read, read_system
+from schemas.sheet import MEDIA_TYPES
 from schemas.stored import StoredSystem, SystemSummary
 from schemas.system import BodiesSystem, MatricesSystem, System
 from service import __version__, failures
@@ -84,7 +85,10 @@ def _paths() -> Document:
 
 
 def _task(task: Task) -> Document:
-    content = {"application/json": {"schema": _reference(task.question), "example": task.example}}
+    content = {
+        "application/json": {"schema": _reference(task.question), "example": task.example},
+        **_sheets(),
+    }
     return {
         "summary": task.summary,
         "description": task.description,
@@ -112,7 +116,8 @@ def _post_system() -> Document:
                 "application/json": {
                     "schema": {"$ref": REFERENCE.format(model="System")},
                     "example": example,
-                }
+                },
+                **_sheets(),
             },
         },
         "responses": {"200": faults, "201": created, **_problems(413, 415, 422)},
@@ -125,8 +130,8 @@ def _get_system() -> Document:
     return {
         "summary": "A stored system",
         "description": "In SI, with every default filled in, and a summary.",
-        "parameters": [_identity(), *_queries(PROBLEMS)],
-        "responses": {"200": answer, **_problems()},
+        "parameters": [_identity(), *_queries(FORMAT, PROBLEMS)],
+        "responses": {"200": answer, "304": {"description": "Not changed."}, **_problems(406)},
     }
 
 
@@ -178,6 +183,11 @@ def _responses(task: Task, statuses: tuple[int, ...], *, metrics: bool = False) 
     if metrics:
         found["content"][METRICS.media_type] = {"schema": {"type": "string"}}
     return {"200": found, "304": {"description": "Not changed."}, **_problems(*statuses)}
+
+
+def _sheets() -> Document:
+    """A sheet is text whose blocks and columns are the fields of the JSON (see /docs)."""
+    return {media: {"schema": {"type": "string"}} for media in MEDIA_TYPES}
 
 
 def _other_forms() -> Document:

@@ -113,8 +113,5 @@ def problem_response(request: Request, failure: failures.Failure) -> Response:
 
 def _problem_table(failure: failures.Failure) -> str:
     faults = failure.listed() or [Fault("", failure.detail)]
-    rows = [
-        [failure.name, getattr(f, "row", None), getattr(f, "column", None), f.pointer, f.detail]
-        for f in faults
-    ]
+    rows = [[failure.name, f.row, f.column, f.pointer, f.detail] for f in faults]
     return rows_to_csv(("problem", "row", "column", "pointer", "detail"), rows)

@@ -5,10 +5,12 @@ from collections.abc import Collection, Mapping
 from typing import Any
 
 import zstandard
+from pydantic import BaseModel
 from starlette.requests import Request
 
 from schemas.faults import Fault, Malformed
 from schemas.reading import parse_json
+from schemas.sheet import MEDIA_TYPES, Sheet, read_sheet
 from service import failures
 
 
@@ -78,13 +80,31 @@ def json_of(body: bytes, content_type: str) -> Any:
     media = content_type.partition(";")[0].strip().lower()
     if media not in ("application/json", "") and not media.endswith("+json"):
         raise failures.UnsupportedMedia(
-            f"The body is '{media[:80]}', but application/json is expected.",
-            headers={"Accept": "application/json"},
+            f"The body is '{media[:80]}', but JSON or a sheet is expected.",
+            headers={"Accept": ", ".join(("application/json", *MEDIA_TYPES))},
         )
     try:
         return parse_json(body)
     except Malformed as fault:
         raise failures.Malformed("The body can't be read.", fault.faults) from None
+
+
+def is_sheet(content_type: str) -> bool:
+    """Whether a body of this media type is a sheet."""
+    return content_type.partition(";")[0].strip().lower() in MEDIA_TYPES
+
+
+def sheet_of(body: bytes, content_type: str, question: type[BaseModel] | None = None) -> Sheet:
+    """A posted sheet: a question of a task, or a system.
+
+    Raises
+    ------
+    failures.Malformed
+    """
+    try:
+        return read_sheet(body, content_type, question)
+    except Malformed as fault:
+        raise failures.Malformed("The sheet can't be read.", fault.faults) from None
 
 
 def parameters(request: Request, known: Collection[str]) -> Mapping[str, str]:

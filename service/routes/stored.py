@@ -1,14 +1,19 @@
 """Systems and answers by their id."""
 
+from typing import Any
+
 import orjson
 from starlette.requests import Request
 from starlette.responses import Response
 
+from schemas.faults import Invalid
+from schemas.reading import read_system
+from schemas.sheet import write_sheet
 from service import failures
-from service.routes.desk import Desk
-from service.routes.negotiation import matches
+from service.routes.desk import Desk, invalid
+from service.routes.negotiation import choose, matches
 from service.routes.replies import ANSWER_PARAMETERS, answer_reply
-from service.routes.requests import body_of, json_of, parameters
+from service.routes.requests import body_of, is_sheet, json_of, parameters, sheet_of
 from service.tasks import summarize
 
 
@@ -17,7 +22,15 @@ async def post_system(request: Request) -> Response:
     desk: Desk = request.app.state.desk
     parameters(request, ("problems",))
     body = await body_of(request, desk.settings.max_body_bytes)
-    kept = await desk.keep_system(json_of(body, request.headers.get("content-type", "")))
+    content_type = request.headers.get("content-type", "")
+    if is_sheet(content_type):
+        kept = await _keep_sheet(desk, body, content_type)
+    else:
+        try:
+            system = read_system(json_of(body, content_type))
+        except Invalid as fault:
+            raise invalid(fault) from None
+        kept = await desk.keep_system(system)
     return Response(
         orjson.dumps(kept, option=orjson.OPT_SERIALIZE_NUMPY),
         201,
@@ -26,10 +39,23 @@ async def post_system(request: Request) -> Response:
     )
 
 
+async def _keep_sheet(desk: Desk, body: bytes, content_type: str) -> dict[str, Any]:
+    """Store a system that stands in a sheet; faults name its rows and columns."""
+    sheet = sheet_of(body, content_type)
+    try:
+        system = sheet.validated(read_system)
+    except Invalid as fault:
+        raise invalid(fault) from None
+    try:
+        return await desk.keep_system(system)
+    except failures.Invalid as failure:
+        raise failures.Invalid(failure.detail, sheet.located(failure.faults)) from None
+
+
 async def get_system(request: Request) -> Response:
     """GET /v1/systems/{id}: the canonical content of a system, and its summary."""
     desk: Desk = request.app.state.desk
-    parameters(request, ("problems",))
+    query = parameters(request, ("problems", "format"))
     identity = request.path_params["identity"]
     content = desk.store.system(identity)
     if content is None:
@@ -38,6 +64,11 @@ async def get_system(request: Request) -> Response:
     if matches(request.headers.get("if-none-match", ""), etag):
         return Response(status_code=304, headers={"ETag": etag})
     _, system = desk.stored_system(identity)
+    offered = {"json": "application/json", "csv": "text/csv"}
+    form = choose(query.get("format"), request.headers.get("accept", ""), offered)
+    if form == "csv":
+        headers = {"ETag": f'"{identity}-csv"', "Vary": "Accept"}
+        return Response(write_sheet(system), headers=headers, media_type="text/csv; charset=utf-8")
     document = {"id": identity, "system": orjson.Fragment(content), **summarize(system)}
     body = orjson.dumps(document, option=orjson.OPT_SERIALIZE_NUMPY)
     return Response(body, headers={"ETag": etag}, media_type="application/json")

@@ -7,10 +7,11 @@ from starlette.requests import Request
 from starlette.responses import Response
 
 from schemas.faults import Invalid
+from schemas.reading import read
 from service import failures
-from service.routes.desk import Desk, invalid
+from service.routes.desk import Answered, Desk, invalid
 from service.routes.replies import ANSWER_PARAMETERS, answer_reply
-from service.routes.requests import body_of, json_of, parameters
+from service.routes.requests import body_of, is_sheet, json_of, parameters, sheet_of
 from service.tasks import TASKS, GetForm, Task
 
 Endpoint = Callable[[Request], Awaitable[Response]]
@@ -30,14 +31,30 @@ def post(task: Task) -> Endpoint:
         if known is not None:
             return known.response(request, **{"Cache-Status": HIT})
         query = parameters(request, ANSWER_PARAMETERS)
-        question = desk.question(task, json_of(body, content_type))
-        answered = await desk.ask(task, question)
+        if is_sheet(content_type):
+            answered = await _ask_with_sheet(desk, task, body, content_type)
+        else:
+            question = desk.question(task, json_of(body, content_type))
+            answered = await desk.ask(task, question)
         reply = answer_reply(answered.body, task.name, query, accept)
         reply.headers["Content-Location"] = f"/v1/results/{answered.identity}"
         desk.remembered.put(key, reply)
         return reply.response(request, **{"Cache-Status": HIT if answered.hit else MISS})
 
     return endpoint
+
+
+async def _ask_with_sheet(desk: Desk, task: Task, body: bytes, content_type: str) -> Answered:
+    """The answer to a question that stands in a sheet; faults name its rows and columns."""
+    sheet = sheet_of(body, content_type, task.question)
+    try:
+        question = sheet.validated(lambda raw: read(task.question, raw))
+    except Invalid as fault:
+        raise invalid(fault) from None
+    try:
+        return await desk.ask(task, question)
+    except failures.Invalid as failure:
+        raise failures.Invalid(failure.detail, sheet.located(failure.faults)) from None
 
 
 def _key(*parts: str | bytes) -> bytes:

@@ -1,5 +1,7 @@
 """Large sparse systems: lattices in closed form, no mode missed, memory estimated before."""
 
+from typing import Any
+
 import numpy as np
 import pytest
 from scipy.sparse import block_diag, csc_array, csr_array, diags_array, eye_array, kron
@@ -13,7 +15,7 @@ from service.compute.sparse_factor import factor
 from service.compute.sparse_modes import SparsePencil, sparse_modes
 
 
-def pencil(K: csc_array, M: csc_array) -> SparsePencil:
+def pencil(K: Any, M: Any) -> SparsePencil:
     """K − λM without ties."""
     size = K.shape[0]
     names = tuple(f"p{number}/x" for number in range(size))
@@ -22,27 +24,32 @@ def pencil(K: csc_array, M: csc_array) -> SparsePencil:
     )
 
 
-def chain(size: int, *, free: bool) -> csr_array:
+def tridiagonal(side: Any, middle: Any) -> csr_array[Any]:
+    """A symmetric matrix of three diagonals."""
+    bands: Any = [side, middle, side]
+    return csr_array(diags_array(bands, offsets=[-1, 0, 1]))
+
+
+def chain(size: int, *, free: bool) -> csr_array[Any]:
     """Second differences, fixed at both ends or free."""
     middle = np.full(size, 2.0)
     if free:
         middle[[0, -1]] = 1.0
-    side = -np.ones(size - 1)
-    return csr_array(diags_array([side, middle, side], offsets=[-1, 0, 1]))
+    return tridiagonal(-np.ones(size - 1), middle)
 
 
-def lattice(*sizes: int, free: bool = False) -> csc_array:
+def lattice(*sizes: int, free: bool = False) -> csc_array[Any]:
     """Equal masses and springs on a grid, one motion a point."""
-    total = csr_array((int(np.prod(sizes)),) * 2)
+    total: Any = csr_array((int(np.prod(sizes)),) * 2)
     for axis, size in enumerate(sizes):
-        part = csr_array([[1.0]])
+        part: Any = csr_array([[1.0]])
         for other, length in enumerate(sizes):
             part = kron(part, chain(size, free=free) if axis == other else eye_array(length))
         total = total + part
     return csc_array(total)
 
 
-def lattice_values(*sizes: int, free: bool = False) -> np.ndarray:
+def lattice_values(*sizes: int, free: bool = False) -> Any:
     """Sums of the uniform chain's 4 sin²; e.g. Rayleigh, Theory of Sound, ch. 6."""
     sums = np.zeros(1)
     for size in sizes:
@@ -75,11 +82,7 @@ def test_no_mode_is_missed_with_clusters_and_repeated_roots(seed: int) -> None:
     random = np.random.default_rng(seed)
     copies, size = int(random.integers(2, 7)), int(random.integers(20, 60))
     stiffness = 10.0 ** random.uniform(2, 5, size + 1)
-    one = csr_array(
-        diags_array(
-            [-stiffness[1:-1], stiffness[:-1] + stiffness[1:], -stiffness[1:-1]], offsets=[-1, 0, 1]
-        )
-    )
+    one = tridiagonal(-stiffness[1:-1], stiffness[:-1] + stiffness[1:])
     mass = random.uniform(0.5, 2.0, size)
     spread = 1.0 + np.repeat(random.choice([0.0, 1e-9, 1e-6, 1e-3], copies), size) * random.random(
         copies * size
@@ -127,7 +130,7 @@ def test_a_consistent_mass_is_bounded_too() -> None:
     # Linear rod elements: λ = 6(1 − cos)/(2 + cos) (closed form of the two tridiagonal matrices).
     size = 2000
     side = np.full(size - 1, 1 / 6)
-    M = csc_array(diags_array([side, np.full(size, 4 / 6), side], offsets=[-1, 0, 1]))
+    M = tridiagonal(side, np.full(size, 4 / 6))
     found = sparse_modes(pencil(csc_array(chain(size, free=False)), M), Wanted(count=10))
     cosines = np.cos(np.pi * np.arange(1, 11) / (size + 1))
     assert np.all(np.abs(found.values - 6 * (1 - cosines) / (2 + cosines)) <= found.bounds)

@@ -1,8 +1,6 @@
 """The same machine as JSON and as a sheet is the same machine."""
 
-import json
 from copy import deepcopy
-from pathlib import Path
 from typing import Any
 
 import pytest
@@ -17,7 +15,6 @@ from schemas.sheet import read_sheet
 from schemas.system import AnySystem
 
 Raw = dict[str, Any]
-EXAMPLES = Path(__file__).parents[2] / "deploy" / "examples"
 
 JSON: Raw = {
     "kind": "bodies",
@@ -28,7 +25,13 @@ JSON: Raw = {
     "damping": {"kind": "modal", "ratio": 0.02},
     "bodies": [
         {"name": "12", "mass": "40 lb", "at": [0, 0, 0.5], "inertia": 1.25},
-        {"name": "motor", "mass": "100.5 lb", "at": [1.5, 0, 0.5], "inertia": 3, "held": ["x", "z"]},
+        {
+            "name": "motor",
+            "mass": "100.5 lb",
+            "at": [1.5, 0, 0.5],
+            "inertia": 3,
+            "held": ["x", "z"],
+        },
         {"name": "TRUE", "motions": ["z"]},
     ],
     "connections": [
@@ -86,7 +89,7 @@ SHEET: dict[str, list[list[str]]] = {
         ["spring", "tie", "12 | motor", "", "", "-4000.5", "1", "0", ".5", "true"],
         ["link", "rod", "motor|TRUE", *[""] * 7, "z"],
         ["bearing", "bush", "12|motor", *[""] * 8, "y",
-         *"600 1e6 200000 -2E5 1000000.0 1200 2e6 3e5 -3e5 +2e6".split()],
+         *["600", "1e6", "200000", "-2E5", "1000000.0", "1200", "2e6", "3e5", "-3e5", "+2e6"]],
     ],
 }  # fmt: skip
 
@@ -150,8 +153,7 @@ def test_the_order_of_columns_changes_no_id(order: list[int]) -> None:
         [row[column] if column < len(row) else "" for column in order]
         for row in SHEET["connections"]
     ]
-    if not any(row[0] == "[" for row in moved):
-        assert identity(system_of(sheet_of({**SHEET, "connections": moved}))) == AS_JSON
+    assert identity(system_of(sheet_of({**SHEET, "connections": moved}))) == AS_JSON
 
 
 def test_the_order_of_blocks_and_blank_rows_change_no_id() -> None:
@@ -178,7 +180,12 @@ def test_what_spreadsheets_save_is_read(encode: Any, content_type: str) -> None:
 
 
 def test_line_ends_of_every_kind_are_read() -> None:
-    data = sheet_of({**SHEET, "system": [["kind", *SHEET["system"][0][2:]], ["bodies", *SHEET["system"][1][2:]]]})
+    data = sheet_of(
+        {
+            **SHEET,
+            "system": [["kind", *SHEET["system"][0][2:]], ["bodies", *SHEET["system"][1][2:]]],
+        }
+    )
     found = {identity(system_of(data.replace(b"\r\n", end))) for end in (b"\r\n", b"\n", b"\r")}
     assert len(found) == 1
 
@@ -188,7 +195,7 @@ def test_a_question_on_a_sheet_is_the_same_question() -> None:
         **SHEET,
         "operation": [["name", "min_rpm", "max_rpm"], ["run", "900", "1100"], ["slow", "5 Hz", "6 Hz"]],
         "excitations": [
-            ["name", "order", "frequency_hz"], ["unbalance", "1", ""], ["2×line".replace("×", "x"), "", "100"],
+            ["name", "order", "frequency_hz"], ["unbalance", "1", ""], ["2xline", "", "100"],
         ],
         "options": [["rule.kind", "rule.mode_above", "rule.mode_below"], ["fraction", "0.25", "15 %"]],
         "forces_at": [["excitation", "at"], ["unbalance", "12/x|12/z"], ["unbalance", "motor/ry"]],
@@ -277,7 +284,14 @@ def test_matrices_may_be_lists_of_entries_or_matrix_market_text() -> None:
 
 @pytest.mark.parametrize(
     ("cell", "text"),
-    [("'=A1", "=A1"), ("''", "'"), ("'tis", "'tis"), ("''tis", "'tis"), ("' a ", " a "), (" a ", "a")],
+    [
+        ("'=A1", "=A1"),
+        ("''", "'"),
+        ("'tis", "'tis"),
+        ("''tis", "'tis"),
+        ("' a ", " a "),
+        (" a ", "a"),
+    ],
 )
 def test_an_apostrophe_that_protects_text_is_taken_off(cell: str, text: str) -> None:
     assert read_sheet(sheet_of({"system": [["note"], [cell]]}), "text/csv").raw["note"] == text
@@ -286,9 +300,9 @@ def test_an_apostrophe_that_protects_text_is_taken_off(cell: str, text: str) -> 
 def test_places_are_those_of_the_cells() -> None:
     sheet = read_sheet(sheet_of(SHEET), "text/csv")
     places = {
-        "/name": (4, 1),  # its note takes two lines, but one row
+        "/name": (3, 1),
         "/damping": (3, 5),
-        "/bodies": (5, 1),
+        "/bodies": (5, 1),  # the note above takes two lines, but one row
         "/bodies/1/mass": (8, 2),
         "/bodies/1/at/2": (8, 5),
         "/bodies/2/mass": (9, 2),  # blank
@@ -297,12 +311,6 @@ def test_places_are_those_of_the_cells() -> None:
         "/connections/2/length": (15, 1),  # has no column
         "/connections/1/between/0": (14, 3),
         "/connections/99": (11, 1),
+        "/kind": (3, 1),
     }
-    places["/name"] = (3, 1)
     assert {pointer: sheet.place(pointer) for pointer in places} == places
-    assert sheet.place("/nothing/there") == (2 - 1, 1)
-
-
-@pytest.mark.parametrize("path", sorted(EXAMPLES.glob("*.json")), ids=lambda path: path.stem)
-def test_an_example_is_its_own_sheet(path: Path) -> None:
-    assert json.loads(path.read_text("utf-8"))

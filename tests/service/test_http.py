@@ -112,10 +112,16 @@ def test_questions_can_stand_in_the_address(client: httpx.Client) -> None:
     identity = client.post("/v1/systems", json=fresh("by address")).json()["id"]
     modes = client.get(f"/v1/systems/{identity}/modes", params={"count": 1})
     assert modes.json()["modes"][0]["frequency_hz"] == pytest.approx(20.1317, rel=1e-5)
-    query = {"min_rpm": 900, "max_rpm": 1100, "orders": "1,2", "lines_hz": "100", "fraction": 0.2}
+    query: dict[str, Any] = {
+        "min_rpm": 900,
+        "max_rpm": 1100,
+        "orders": "1,2",
+        "lines_hz": "100",
+        "fraction": 0.2,
+    }
     found = client.get(f"/v1/systems/{identity}/separation", params=query)
     assert found.json()["verdict"] == "short"
-    now = {"rpm": 1208, "orders": "1", "pick": "/verdict"}
+    now: dict[str, Any] = {"rpm": 1208, "orders": "1", "pick": "/verdict"}
     assert client.get(f"/v1/systems/{identity}/separation", params=now).text == "short"
     gauges = client.get(
         f"/v1/systems/{identity}/separation", params={**query, "format": "openmetrics"}
