@@ -209,18 +209,22 @@ def named_shares(
     return [
         ([] if kind == "rigid-body" else _largest("strain", names, strained))
         + _largest("kinetic", analysed.carriers, moving)
-        for kind, strained, moving in zip(kind_list, strain.T, kinetic.T, strict=True)
+        for kind, strained, moving in zip(
+            kind_list, strain.T.tolist(), kinetic.T.tolist(), strict=True
+        )
     ]
 
 
-def _largest(kind: str, names: tuple[str, ...], shares: Floats) -> list[dict[str, Any]]:
+def _largest(kind: str, names: tuple[str, ...], shares: list[float]) -> list[dict[str, Any]]:
     """Largest first, equal ones (to six digits) in the order of the machine."""
-    notable = np.flatnonzero(np.abs(shares) >= LEAST_SHARE).tolist()
-    values = [float(shares[place]) for place in notable]
-    listed = sorted(zip([-round(abs(v), 6) for v in values], notable, values, strict=True))
+    found = sorted(
+        (-round(abs(share), 6), place, share)
+        for place, share in enumerate(shares)
+        if share >= LEAST_SHARE or share <= -LEAST_SHARE
+    )
     return [
-        {"of": names[place], "kind": kind, "share": value}
-        for _, place, value in listed[:MOST_SHARES]
+        {"of": names[place], "kind": kind, "share": share}
+        for _, place, share in found[:MOST_SHARES]
     ]
 
 

@@ -1,11 +1,12 @@
 """Sentences that say what a number means for the machine."""
 
+from dataclasses import dataclass
 from math import pi
 from typing import Any
 
 import numpy as np
 
-from service.compute.machine import AXES, Floats, Integers
+from service.compute.machine import AXES, Floats
 from service.tasks.machines import Analysed
 
 NOTABLE = 0.15  # of a mode's kinetic energy: a motion or a body worth naming
@@ -50,13 +51,34 @@ def mode_readings(
     shapes : (n, m) mass-normalized shapes
     frequencies : |ω|/2π of each, Hz
     """
-    energies = np.abs(shapes * (analysed.M @ shapes)).T
+    energies = np.abs(shapes * (analysed.M @ shapes))
+    per_body = np.zeros((len(analysed.points), energies.shape[1]))
+    np.add.at(per_body, analysed.owners, energies)
+    rows: list[list[int]] = [[] for _ in analysed.points]
+    for row, owner in enumerate(analysed.owners.tolist()):
+        rows[owner].append(row)
+    machine = _Moving(analysed.points, rows, analysed.axes.tolist())
     return [
-        _mode_reading(frequency, kind, part, _what_moves(analysed, energy, motion))
-        for frequency, kind, part, energy, motion in zip(
-            frequencies, kinds, shares, energies, shapes.T, strict=True
+        _mode_reading(frequency, kind, part, _what_moves(machine, energy, bodies, motion))
+        for frequency, kind, part, energy, bodies, motion in zip(
+            frequencies,
+            kinds,
+            shares,
+            energies.T.tolist(),
+            per_body.T.tolist(),
+            shapes.T.tolist(),
+            strict=True,
         )
     ]
+
+
+@dataclass(frozen=True, slots=True)
+class _Moving:
+    """Names of the points, the rows of their motions, and the axis of each row."""
+
+    points: tuple[str, ...]
+    rows: list[list[int]]
+    axes: list[int]
 
 
 def _mode_reading(frequency: float, kind: str, shares: list[dict[str, Any]], moving: str) -> str:
@@ -73,28 +95,28 @@ def _mode_reading(frequency: float, kind: str, shares: list[dict[str, Any]], mov
     return sentence + "."
 
 
-def _what_moves(analysed: Analysed, energy: Floats, motion: Floats) -> str:
+def _what_moves(
+    machine: _Moving, energy: list[float], per_body: list[float], motion: list[float]
+) -> str:
     """The bodies with most kinetic energy and the motions that carry it."""
-    per_body = np.bincount(analysed.owners, energy)
-    notable = NOTABLE * float(per_body.sum())
-    leading = np.flatnonzero((per_body >= notable) & (per_body > 0.0)).tolist()
-    leading.sort(key=lambda body: -_rounded(float(per_body[body]), notable))
+    notable = NOTABLE * sum(per_body)
+    leading = [body for body, part in enumerate(per_body) if part >= notable and part > 0.0]
     if not leading:
         return "many bodies move, none with a large part of the kinetic energy"
+    leading.sort(key=lambda body: -_rounded(per_body[body], notable))
     leading = leading[:3]
-    rows = {body: np.flatnonzero(analysed.owners == body) for body in leading}
-    own = {body: _motions(analysed.axes[rows[body]], energy[rows[body]]) for body in leading}
+    own = {body: _motions(machine, energy, body) for body in leading}
     first = own[leading[0]]
     if len(leading) > 1 and all(motions == first for motions in own.values()):
         signs = {
-            bool(motion[row] > 0.0)
+            motion[row] > 0.0
             for body in leading
-            for row in rows[body]
-            if analysed.axes[row] == first[0]
+            for row in machine.rows[body]
+            if machine.axes[row] == first[0]
         }
-        names = listed([analysed.points[body] for body in leading])
+        names = listed([machine.points[body] for body in leading])
         return f"{names} move {_words(first)}{_together(len(signs) == 1, len(leading))}"
-    return listed([f"{analysed.points[body]} moves {_words(own[body])}" for body in leading])
+    return listed([f"{machine.points[body]} moves {_words(own[body])}" for body in leading])
 
 
 def _rounded(part: float, unit: float) -> int:
@@ -102,9 +124,9 @@ def _rounded(part: float, unit: float) -> int:
     return round(part / unit * 1e6)
 
 
-def _motions(axes: Integers, energy: Floats) -> list[int]:
+def _motions(machine: _Moving, energy: list[float], body: int) -> list[int]:
     """The axes that carry a notable part of one body's kinetic energy, the largest first."""
-    parts = list(zip(energy.tolist(), axes.tolist(), strict=True))
+    parts = [(energy[row], machine.axes[row]) for row in machine.rows[body]]
     notable = NOTABLE * sum(part for part, _ in parts)
     chosen = [(part, axis) for part, axis in parts if part >= notable]
     chosen.sort(key=lambda pair: -_rounded(pair[0], notable))
