@@ -44,6 +44,8 @@ def _from_entries(
                     f"{index[place]} is outside: {size} degrees of freedom are numbered from 0",
                 )
             )
+    if any(fault.pointer.startswith(f"/{field}/") for fault in faults):
+        return None
     if posted.symmetric and (row > column).any() and (row < column).any():
         minority = row > column if (row > column).sum() <= (row < column).sum() else row < column
         place = int(np.flatnonzero(minority)[0])
@@ -53,7 +55,6 @@ def _from_entries(
                 "lies in the other triangle: a symmetric list has the upper or the lower one",
             )
         )
-    if any(fault.pointer.startswith(f"/{field}/") for fault in faults):
         return None
     found = coo_array((value, (row, column)), shape=(size, size))
     return _mirrored(found) if posted.symmetric else found
