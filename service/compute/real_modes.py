@@ -8,6 +8,7 @@ Rigid-body motions are projected out first, so that 0 Hz is exactly 0.
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.linalg import eigh, lapack
 
 from service.compute.clusters import clusters, settle, settle_space
@@ -195,11 +196,6 @@ def _checked(pencil: Pencil, values: Floats, shapes: Floats, free: Floats, metho
         values[first:last].sort()  # so that roundoff doesn't reorder what has been settled
     exact = is_rigid & (pencil.J is not None)  # explicit matrices are singular up to roundoff only
     bounds = np.where(exact, 0.0, _bounds(pencil, residual, shapes, values))
-    scale = np.linalg.norm(KX, axis=0) + np.abs(values) * np.linalg.norm(MX, axis=0)
-    strained = ~is_rigid & (scale > 0.0)
-    relative = np.linalg.norm(residual, axis=0)[strained] / scale[strained]
-    cross = shapes.T @ MX
-    np.fill_diagonal(cross, 0.0)
     order = np.argsort(values, kind="stable")
     return Modes(
         values=values[order],
@@ -210,11 +206,26 @@ def _checked(pencil: Pencil, values: Floats, shapes: Floats, free: Floats, metho
         below=0.0,
         complete=False,
         cut=False,
-        residual=float(relative.max(initial=0.0)),
-        cross=float(np.abs(cross).max()),
+        residual=largest_residual(KX, MX, values, is_rigid),
+        cross=largest_cross(shapes, MX),
         method=f"Cholesky reduction, dense symmetric eigenproblem ({method}); count by the "
         "inertia of a Bunch–Kaufman factorization",
     )
+
+
+def largest_residual(KX: Floats, MX: Floats, values: Floats, rigid: NDArray[np.bool_]) -> float:
+    """The largest ‖Kφ − λMφ‖/(‖Kφ‖ + |λ|‖Mφ‖) over modes that strain something."""
+    scale = np.linalg.norm(KX, axis=0) + np.abs(values) * np.linalg.norm(MX, axis=0)
+    strained = ~rigid & (scale > 0.0)
+    relative = np.linalg.norm(KX - MX * values, axis=0)[strained] / scale[strained]
+    return float(relative.max(initial=0.0))
+
+
+def largest_cross(shapes: Floats, MX: Floats) -> float:
+    """The largest |φᵢᵀMφⱼ| of different shapes."""
+    cross = shapes.T @ MX
+    np.fill_diagonal(cross, 0.0)
+    return float(np.abs(cross).max(initial=0.0))
 
 
 def _bounds(pencil: Pencil, residual: Floats, shapes: Floats, values: Floats) -> Floats:

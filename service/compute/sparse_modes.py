@@ -17,7 +17,7 @@ from service.compute.clusters import settle, settle_space
 from service.compute.constraints import Ties
 from service.compute.machine import Floats, Unsound
 from service.compute.pencil import EPS
-from service.compute.real_modes import ELSE, Modes, Wanted
+from service.compute.real_modes import ELSE, Modes, Wanted, largest_cross, largest_residual
 from service.compute.sparse_factor import Factor, count_below, factor
 
 SHIFT = 1e-7  # of a typical diagonal quotient of K and M: how far below zero
@@ -245,11 +245,6 @@ def _checked(pencil: SparsePencil, values: Floats, shapes: Floats) -> Modes:
     shapes, KX, MX = shapes / norm, KX / norm, MX / norm
     values = np.where(rigid, 0.0, (shapes * KX).sum(axis=0))
     bounds = _bounds(pencil, shapes, values)
-    scale = np.linalg.norm(KX, axis=0) + np.abs(values) * np.linalg.norm(MX, axis=0)
-    strained = ~rigid & (scale > 0.0)
-    residual = np.linalg.norm(KX - MX * values, axis=0)[strained] / scale[strained]
-    cross = shapes.T @ MX
-    np.fill_diagonal(cross, 0.0)
     order = np.argsort(values, kind="stable")
     return Modes(
         values=values[order],
@@ -260,8 +255,8 @@ def _checked(pencil: SparsePencil, values: Floats, shapes: Floats) -> Modes:
         below=0.0,
         complete=False,
         cut=False,
-        residual=float(residual.max(initial=0.0)),
-        cross=float(np.abs(cross).max(initial=0.0)),
+        residual=largest_residual(KX, MX, values, rigid),
+        cross=largest_cross(shapes, MX),
         method="shift-invert Lanczos on a sparse minimum-degree factorization; count by the "
         "inertia of another one",
     )
