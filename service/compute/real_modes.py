@@ -130,7 +130,8 @@ def _reach(modes: Modes, pencil: Pencil, wanted: Wanted) -> float | None:
     if len(values) < pencil.size:
         return None
     above = values[-1] + 8 * bounds[-1] + 1e-6 * np.abs(values).max()
-    return float(max(values[-1] * 1.01, above, np.finfo(float).tiny))
+    # Of a system that nothing holds any shift above 0 will do.
+    return float(max(values[-1] * 1.01, above, np.finfo(float).tiny if values.any() else 1.0))
 
 
 def _solve(pencil: Pencil, A: Floats, number: int) -> Modes:
