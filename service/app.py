@@ -1,5 +1,6 @@
 """Puts the application together; nothing else."""
 
+import gc
 import logging
 from collections.abc import AsyncIterator, Sequence
 from contextlib import asynccontextmanager
@@ -7,7 +8,7 @@ from os import environ
 
 from fastapi import FastAPI
 from starlette.exceptions import HTTPException
-from starlette.requests import Request
+from starlette.requests import ClientDisconnect, Request
 from starlette.responses import Response
 from starlette.routing import BaseRoute
 from threadpoolctl import threadpool_limits
@@ -32,6 +33,10 @@ def application(settings: Settings, more_routes: Sequence[BaseRoute] = ()) -> Fa
         # the other server processes.
         with threadpool_limits(1), Store(settings.store) as store:
             app.state.desk = Desk(store, settings)
+            # What is here now stays: looking through it again and again takes a good part of the
+            # time of a small question.
+            gc.collect()
+            gc.freeze()
             yield
 
     app = FastAPI(
@@ -42,7 +47,12 @@ def application(settings: Settings, more_routes: Sequence[BaseRoute] = ()) -> Fa
         redoc_url=None,
         redirect_slashes=False,
         lifespan=lifespan,
-        exception_handlers={Failure: _failed, HTTPException: _refused, Exception: _broke},
+        exception_handlers={
+            Failure: _failed,
+            HTTPException: _refused,
+            ClientDisconnect: _gone,
+            Exception: _broke,
+        },
     )
     app.router.routes[:] = [*routes(), *more_routes]
     return app
@@ -76,6 +86,11 @@ def _detail(status: int, headers: dict[str, str]) -> str:
     return f"Allowed here: {headers['Allow']}." if "Allow" in headers else "The request is refused."
 
 
+async def _gone(*_: object) -> Response:
+    """The caller left while still sending: nobody reads this."""
+    return Response(status_code=400)
+
+
 async def _broke(request: Request, error: Exception) -> Response:
-    log.error("%s %s failed", request.method, request.url.path, exc_info=error)
+    log.error("%s %s failed", request.method, request.scope["path"], exc_info=error)
     return problem_response(request, Internal("The service failed; its log says why."))

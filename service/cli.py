@@ -6,12 +6,16 @@ import os
 import socket
 import sys
 from collections.abc import Sequence
+from contextlib import suppress
 from dataclasses import fields
 
 import uvicorn
 
 from service import __version__
 from service.settings import Settings, environment_name
+from service.store import Store
+
+BACKLOG = 2048  # connections that wait to be taken
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
@@ -55,6 +59,7 @@ def _serve(options: argparse.Namespace) -> int:
             f"{settings.host} isn't a loopback address, and this version has no keys to protect "
             "it: listen on 127.0.0.1 or ::1, behind a proxy that lets in whom you trust"
         )
+    Store(settings.store).close()  # says what is wrong with it before anything listens
     with _listening(settings) as bound:
         port = bound.getsockname()[1]
         host = f"[{settings.host}]" if ":" in settings.host else settings.host
@@ -78,7 +83,8 @@ def _run(config: uvicorn.Config, bound: socket.socket) -> None:
 
         Multiprocess(config, [bound]).run()
     else:
-        uvicorn.Server(config).run(sockets=[bound])
+        with suppress(KeyboardInterrupt):
+            uvicorn.Server(config).run(sockets=[bound])
 
 
 def _listening(settings: Settings) -> socket.socket:
@@ -87,6 +93,7 @@ def _listening(settings: Settings) -> socket.socket:
     bound.setsockopt(socket.SOL_SOCKET, socket.SO_REUSEADDR, 1)
     try:
         bound.bind((settings.host, settings.port))
+        bound.listen(BACKLOG)  # whoever reads the address below may call at once
     except OSError as error:
         bound.close()
         raise ValueError(f"can't listen on {settings.host}:{settings.port}: {error}") from None

@@ -2,25 +2,28 @@
 
     Failure
     ├── Malformed            400
-    ├── UnknownParameter     400
+    ├── InvalidParameter     400
     ├── NotFound             404
     ├── MethodNotAllowed     405
     ├── NotAcceptable        406
     ├── TooLarge             413
     ├── UnsupportedMedia     415
     ├── Invalid              422
-    └── Internal             500
+    ├── Internal             500
+    └── Unavailable          503
 
 The first line of a docstring is the title of the problem, the rest what its page says.
 """
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from inspect import cleandoc
 from typing import ClassVar
 
 from schemas.faults import Fault
 
 MOST_FAULTS = 100
+LONGEST = 500  # characters of a pointer or a detail: a caller's own megabytes aren't sent back
 
 
 class Failure(Exception):
@@ -63,7 +66,7 @@ class Failure(Exception):
             "type": f"/problems/{self.name}",
             "title": self.title(),
             "status": self.status,
-            "detail": self.detail,
+            "detail": _sendable(self.detail),
             "instance": instance,
         }
         if self.faults:
@@ -72,10 +75,18 @@ class Failure(Exception):
 
     def listed(self) -> list[Fault]:
         """The faults to show: the first hundred, and how many more there are."""
+        shown = [
+            replace(fault, pointer=_sendable(fault.pointer), detail=_sendable(fault.detail))
+            for fault in self.faults[:MOST_FAULTS]
+        ]
         more = len(self.faults) - MOST_FAULTS
-        if more <= 0:
-            return self.faults
-        return [*self.faults[:MOST_FAULTS], Fault("", f"and {more} more faults")]
+        return [*shown, Fault("", f"and {more} more faults")] if more > 0 else shown
+
+
+def _sendable(text: str) -> str:
+    """`text` cut to a length for people, without half surrogate pairs, which UTF-8 can't say."""
+    cut = text if len(text) <= LONGEST else f"{text[:LONGEST]}…"
+    return cut.encode("utf-8", "replace").decode()
 
 
 def _error(fault: Fault) -> dict[str, object]:
@@ -96,14 +107,15 @@ class Malformed(Failure):
     name = "malformed"
 
 
-class UnknownParameter(Failure):
-    """The address holds an unknown or repeated parameter.
+class InvalidParameter(Failure):
+    """A parameter of the address can't be used.
 
+    It is unknown, stands twice, has a value it can't have, or doesn't go with another one.
     Parameters of an address are never ignored. Each error names one.
     """
 
     status = 400
-    name = "unknown-parameter"
+    name = "invalid-parameter"
 
 
 class NotFound(Failure):
@@ -178,11 +190,24 @@ class Internal(Failure):
     name = "internal"
 
 
+class Unavailable(Failure):
+    """The service can't answer at present.
+
+    Nothing is wrong with the request. Ask again after the seconds that Retry-After names.
+    """
+
+    status = 503
+    name = "unavailable"
+
+    def __init__(self, detail: str) -> None:
+        super().__init__(detail, headers={"Retry-After": "5"})
+
+
 FAILURES: dict[str, type[Failure]] = {
     kind.name: kind
     for kind in (
-        Malformed, UnknownParameter, NotFound, MethodNotAllowed, NotAcceptable, TooLarge,
-        UnsupportedMedia, Invalid, Internal,
+        Malformed, InvalidParameter, NotFound, MethodNotAllowed, NotAcceptable, TooLarge,
+        UnsupportedMedia, Invalid, Internal, Unavailable,
     )
 }  # fmt: skip
 

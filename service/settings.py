@@ -4,9 +4,11 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field, fields
 from typing import Any
 
+LARGEST_PORT = 65_535
 
-def _knob(default: Any, help_text: str) -> Any:
-    return field(default=default, metadata={"help": help_text})
+
+def _knob(default: Any, help_text: str, least: int | None = None, most: int | None = None) -> Any:
+    return field(default=default, metadata={"help": help_text, "least": least, "most": most})
 
 
 @dataclass(frozen=True, slots=True)
@@ -14,12 +16,12 @@ class Settings:
     """What the operator sets; each field is one knob."""
 
     host: str = _knob("127.0.0.1", "address to listen on; loopback only, until there are keys")
-    port: int = _knob(8080, "port to listen on; 0 takes a free one")
+    port: int = _knob(8080, "port to listen on; 0 takes a free one", 0, LARGEST_PORT)
     store: str = _knob("sqlite:///wideberth.db", "where systems and answers are kept")
-    workers: int = _knob(1, "server processes on the same store")
-    max_body_bytes: int = _knob(8_388_608, "largest request body")
-    max_degrees_of_freedom: int = _knob(200_000, "largest system that is computed")
-    cache_bytes: int = _knob(67_108_864, "answers kept ready in the memory of each process")
+    workers: int = _knob(1, "server processes on the same store", 1, 256)
+    max_body_bytes: int = _knob(8_388_608, "largest request body, also after inflating", 1)
+    max_degrees_of_freedom: int = _knob(200_000, "largest system that is computed", 1)
+    cache_bytes: int = _knob(67_108_864, "replies kept ready in the memory of each process", 0)
 
     @classmethod
     def from_environment(cls, environment: Mapping[str, str], **given: Any) -> "Settings":
@@ -28,7 +30,7 @@ class Settings:
         Raises
         ------
         ValueError
-            A variable that isn't of the right kind; the message names it.
+            A setting of the wrong kind or out of its range; the message names it.
         """
         values: dict[str, Any] = {}
         for knob in fields(cls):
@@ -37,6 +39,7 @@ class Settings:
                 values[knob.name] = given[knob.name]
             elif variable in environment:
                 values[knob.name] = _converted(environment[variable], type(knob.default), variable)
+            _check_range(values.get(knob.name), knob.metadata, variable)
         return cls(**values)
 
     def to_environment(self) -> dict[str, str]:
@@ -51,9 +54,14 @@ def environment_name(knob: str) -> str:
 
 def _converted(text: str, kind: type, variable: str) -> Any:
     try:
-        value = kind(text)
+        return kind(text)
     except ValueError:
         raise ValueError(f"{variable}: '{text}' isn't a whole number") from None
-    if kind is int and value < 0:
-        raise ValueError(f"{variable}: must not be negative")
-    return value
+
+
+def _check_range(value: Any, allowed: Mapping[str, Any], variable: str) -> None:
+    least, most = allowed["least"], allowed["most"]
+    if least is None or value is None or least <= value <= (most or value):
+        return
+    limits = f"at least {least}" if most is None else f"from {least} to {most}"
+    raise ValueError(f"{variable}: {value} can't be used; it is {limits}")

@@ -6,8 +6,8 @@ is a new column here.
 """
 
 from schemas.sheet.reading import Sheet, read_sheet
-from schemas.sheet.writing import write_sheet
+from schemas.sheet.writing import write_question, write_sheet
 
 MEDIA_TYPES = ("text/csv", "text/tab-separated-values")
 
-__all__ = ["MEDIA_TYPES", "Sheet", "read_sheet", "write_sheet"]
+__all__ = ["MEDIA_TYPES", "Sheet", "read_sheet", "write_question", "write_sheet"]

@@ -199,7 +199,7 @@ def read_matrix(
         findings.add(block.place, "the header and the rows are missing", path)
     if titles == ["matrix_market"]:
         return Lines(block)
-    if set(titles) <= set(MatrixEntry.model_fields):
+    if not titles or set(titles) & set(MatrixEntry.model_fields):
         content = Content(models=[MatrixEntry])
         return Entries(read_table(block, path, content, decimal_comma, findings))
     dense = Dense(block, path, _order(block, titles, names, path, findings))

@@ -6,7 +6,7 @@ from typing import Any, TypeVar
 
 from pydantic import BaseModel
 
-from schemas.faults import Fault, Invalid
+from schemas.faults import Fault, Invalid, Malformed
 from schemas.matrix import EntryList
 from schemas.sheet.blocks import Block, split_blocks
 from schemas.sheet.columns import Content, fields
@@ -158,6 +158,8 @@ class _Assembly:
 
     def sheet(self, rows: list[list[str]]) -> Sheet:
         blocks = split_blocks(rows, self.findings)
+        if not blocks:
+            raise Malformed(self.findings.faults or [Fault("", "the sheet is blank")])
         system = self._system(blocks)
         if self.question is not None:
             question = self._question(blocks, system)

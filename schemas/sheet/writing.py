@@ -1,4 +1,4 @@
-"""A system as a sheet, which reads back as the same system."""
+"""A system or a question as a sheet, which reads back as the same."""
 
 from collections.abc import Iterable, Iterator, Sequence
 from typing import Any
@@ -6,13 +6,16 @@ from typing import Any
 from pydantic import BaseModel
 
 from schemas.matrix import EntryList, MatrixMarket
+from schemas.question import Question
 from schemas.sheet.cells import LIST, protected
 from schemas.sheet.columns import AXES, Content, fields
+from schemas.sheet.matrices import ForceAt
 from schemas.system import AnySystem, BodiesSystem, Body, MatricesSystem
 
-_QUOTED = frozenset(',;\t"\r\n')  # whichever of them a program takes for the separator
+_QUOTED = frozenset(',"\r\n')
 _MATRICES = ("mass", "stiffness", "damping", "gyroscopic", "structural")
 Row = Sequence[str]
+Block = tuple[str, Iterable[Row]]
 
 
 def write_sheet(system: AnySystem) -> str:
@@ -20,18 +23,44 @@ def write_sheet(system: AnySystem) -> str:
 
     Text that a spreadsheet would run as a formula gets an apostrophe, which reading takes off.
     """
-    blocks = _bodies(system) if isinstance(system, BodiesSystem) else _matrices(system)
+    return _text(_blocks_of(system))
+
+
+def write_question(question: Question) -> str:
+    """A question as CSV: the blocks of its system, then those of what is asked."""
+    system = [] if question.system is None else _blocks_of(question.system)
+    return _text([*system, *_asked(question)])
+
+
+def _text(blocks: Iterable[Block]) -> str:
     lines = []
     for name, rows in blocks:
         lines += [f"[{name}]", *(",".join(map(_quoted, row)) for row in rows), ""]
     return "\r\n".join(lines)
 
 
+def _blocks_of(system: AnySystem) -> Iterator[Block]:
+    return _bodies(system) if isinstance(system, BodiesSystem) else _matrices(system)
+
+
+def _asked(question: Question) -> Iterator[Block]:
+    """Lists of objects as blocks of their own, everything else as options."""
+    options = _shown(question, ("system",))
+    if "forces_at" in options:
+        places = options.pop("forces_at").items()
+        yield "forces_at", _table([{"excitation": key, "at": at} for key, at in places], [ForceAt])
+    for name, content in fields(type(question)).items():
+        if name in options and content.items is not None and content.items.models:
+            yield name, _table(options.pop(name), content.items.models)
+    if options:
+        yield "options", _table([options], [type(question)])
+
+
 def _quoted(cell: str) -> str:
     return '"' + cell.replace('"', '""') + '"' if not _QUOTED.isdisjoint(cell) else cell
 
 
-def _bodies(system: BodiesSystem) -> Iterator[tuple[str, Iterable[Row]]]:
+def _bodies(system: BodiesSystem) -> Iterator[Block]:
     yield "system", _table([_shown(system, ("bodies", "connections"))], [BodiesSystem])
     bodies = [_shown(body, _as_the_system(body, system)) for body in system.bodies]
     yield "bodies", _table(bodies, [Body])
@@ -69,6 +98,8 @@ def _shown(value: Any, without: Sequence[str] = ()) -> Any:
     """
     if isinstance(value, list):
         return [_shown(item) for item in value]
+    if isinstance(value, dict):
+        return {key: _shown(item) for key, item in value.items()}
     if not isinstance(value, BaseModel):
         return value
     given = {
@@ -85,9 +116,8 @@ def _leaves(value: Any, content: Content, title: str = "") -> Iterator[tuple[str
     if isinstance(value, dict):
         for name, item in value.items():
             inner = Content()
-            for model in content.models:
-                if name in fields(model):
-                    inner.join(fields(model)[name])
+            for alternative in _inside(content, name):
+                inner.join(alternative)
             yield from _leaves(item, inner, f"{title}.{name}" if title else name)
     elif isinstance(value, list) and content.items is not None and not _in_one_cell(value):
         named = AXES if content.length == len(AXES) else None
@@ -100,6 +130,13 @@ def _leaves(value: Any, content: Content, title: str = "") -> Iterator[tuple[str
         yield title, _cell(value)
 
 
+def _inside(content: Content, name: str) -> Iterator[Content]:
+    """What the field `name` of an object may hold."""
+    if content.values is not None:
+        yield content.values
+    yield from (fields(model)[name] for model in content.models if name in fields(model))
+
+
 def _in_one_cell(value: list[Any]) -> bool:
     return all(isinstance(item, str) for item in value)
 
@@ -110,7 +147,7 @@ def _cell(value: object) -> str:
     return protected(value) if isinstance(value, str) else repr(value)
 
 
-def _matrices(system: MatricesSystem) -> Iterator[tuple[str, Iterable[Row]]]:
+def _matrices(system: MatricesSystem) -> Iterator[Block]:
     given = {name: getattr(system, name) for name in _MATRICES if getattr(system, name) is not None}
     names = system.degrees_of_freedom
     yield "system", _table([_shown(system, ("degrees_of_freedom", *_MATRICES))], [MatricesSystem])

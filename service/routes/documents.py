@@ -9,7 +9,7 @@ from pydantic.json_schema import models_json_schema
 
 from schemas.problem import Problem
 from schemas.reading import read, read_system
-from schemas.sheet import MEDIA_TYPES
+from schemas.sheet import MEDIA_TYPES, write_question, write_sheet
 from schemas.stored import StoredSystem, SystemSummary
 from schemas.system import BodiesSystem, MatricesSystem, System
 from service import __version__, failures
@@ -26,6 +26,14 @@ PROBLEMS = QueryParameter(
     "problems", "`table`: a fault comes back as 200 text/csv, for macros (no unit).", "table"
 )
 ALL_FORMS = (FORMAT, PICK, TABLE, PROBLEMS)
+SHEET = (
+    "A spreadsheet's used range. A row whose first cell is [system], [bodies], [connections], "
+    "[operation], [excitations], [options] or the like opens a block; the next row is its header, "
+    "then comes one row per item. Columns are the fields of the JSON, `.` leads inwards, a unit "
+    "may stand in the header (`mass [lb]`) or in the cell, several names in a cell are separated "
+    "by |. Cells are separated by commas, semicolons or tabs; a decimal comma is read with the "
+    "latter two."
+)
 DESCRIPTION = (
     "Natural frequencies, mode shapes and separation margins of machines on their supports. "
     "Numbers are SI; a string may carry its unit. Answers are screening results on a model: check "
@@ -87,7 +95,7 @@ def _paths() -> Document:
 def _task(task: Task) -> Document:
     content = {
         "application/json": {"schema": _reference(task.question), "example": task.example},
-        **_sheets(),
+        **_sheets(_question_sheet(task)),
     }
     return {
         "summary": task.summary,
@@ -117,7 +125,7 @@ def _post_system() -> Document:
                     "schema": {"$ref": REFERENCE.format(model="System")},
                     "example": example,
                 },
-                **_sheets(),
+                **_sheets(write_sheet(read_system(_own(example)))),
             },
         },
         "responses": {"200": faults, "201": created, **_problems(413, 415, 422)},
@@ -127,9 +135,11 @@ def _post_system() -> Document:
 def _get_system() -> Document:
     answer = _json(StoredSystem, None)
     answer["description"] = "The system in its canonical form."
+    answer["content"]["text/csv"] = {"schema": {"type": "string", "description": SHEET}}
     return {
         "summary": "A stored system",
-        "description": "In SI, with every default filled in, and a summary.",
+        "description": "In SI, with every default filled in, and a summary; or as a sheet (`csv`), "
+        "which gives the same id when it is posted.",
         "parameters": [_identity(), *_queries(FORMAT, PROBLEMS)],
         "responses": {"200": answer, "304": {"description": "Not changed."}, **_problems(406)},
     }
@@ -185,9 +195,13 @@ def _responses(task: Task, statuses: tuple[int, ...], *, metrics: bool = False) 
     return {"200": found, "304": {"description": "Not changed."}, **_problems(*statuses)}
 
 
-def _sheets() -> Document:
-    """A sheet is text whose blocks and columns are the fields of the JSON (see /docs)."""
-    return {media: {"schema": {"type": "string"}} for media in MEDIA_TYPES}
+def _sheets(example: str) -> Document:
+    """The media types of a sheet, with one as an example."""
+    commas, tabs = MEDIA_TYPES
+    return {
+        commas: {"schema": {"type": "string", "description": SHEET}, "example": example},
+        tabs: {"schema": {"type": "string", "description": f"{SHEET} Separated by tabs."}},
+    }
 
 
 def _other_forms() -> Document:
@@ -242,13 +256,23 @@ def _queries(*parameters: QueryParameter) -> list[Document]:
 
 def _answer_example(task: Task) -> Any:
     """The real answer to the task's example, without the digests that name it."""
-    question = read(task.question, orjson.loads(orjson.dumps(task.example)))
+    question = read(task.question, _own(task.example))
     answer = task.run(question.system, question)  # type: ignore[attr-defined]
     head = {"id": "a" + "0" * 40, "task": task.name, "system_id": "s" + "0" * 40}
     return orjson.loads(orjson.dumps(head | answer, option=orjson.OPT_SERIALIZE_NUMPY))
 
 
-def _stored_example() -> Any:
+def _question_sheet(task: Task) -> str:
+    """The task's example as a sheet."""
+    question: Any = read(task.question, _own(task.example))
+    return write_question(question)
 
-    system = read_system(orjson.loads(orjson.dumps(next(iter(TASKS.values())).example["system"])))
+
+def _own(example: Any) -> Any:
+    """A copy that its reader may change."""
+    return orjson.loads(orjson.dumps(example))
+
+
+def _stored_example() -> Any:
+    system = read_system(_own(next(iter(TASKS.values())).example["system"]))
     return {"id": "s" + "0" * 40, **summarize(system)}

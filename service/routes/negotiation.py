@@ -56,9 +56,7 @@ def _quality(media: str, ranges: Sequence[tuple[str, float]]) -> float:
     return next((found[m] for m in (media, f"{kind}/*", "*/*") if m in found), 0.0)
 
 
-def matches(if_none_match: str, etag: str) -> bool:
-    """Whether If-None-Match names `etag`; the comparison is the weak one."""
-    if if_none_match.strip() == "*":
-        return True
-    tags = (tag.strip().removeprefix("W/") for tag in if_none_match.split(","))
-    return etag in tags
+def matches(if_none_match: Sequence[str], etag: str) -> bool:
+    """Whether one of the headers If-None-Match names `etag`; the comparison is the weak one."""
+    tags = [tag.strip().removeprefix("W/") for line in if_none_match for tag in line.split(",")]
+    return etag in tags or tags == ["*"]

@@ -1,34 +1,52 @@
 """Reading a request: its body within the limit, its media type, its parameters."""
 
 import zlib
+from collections import Counter
 from collections.abc import Collection, Mapping
 from typing import Any
 
 import zstandard
-from pydantic import BaseModel
 from starlette.requests import Request
 
-from schemas.faults import Fault, Malformed
+from schemas.faults import Fault, Malformed, pointer
 from schemas.reading import parse_json
-from schemas.sheet import MEDIA_TYPES, Sheet, read_sheet
+from schemas.sheet import MEDIA_TYPES
 from service import failures
+
+PATIENCE = 4  # times the limit: so much is read, though not kept, before the connection is cut
 
 
 async def body_of(request: Request, limit: int) -> bytes:
-    """The body, inflated where it is compressed, refused as soon as it passes `limit` bytes."""
-    announced = request.headers.get("content-length", "")
-    if announced.isascii() and announced.isdigit() and int(announced) > limit:
-        raise _too_large(limit)
+    """The body, inflated where it is compressed.
+
+    A body above `limit` bytes is refused, but read to its end if that isn't far: a caller who is
+    cut off while still sending never sees why.
+
+    Raises
+    ------
+    failures.TooLarge, failures.UnsupportedMedia, failures.Malformed
+    """
+    announced = _announced(request)
+    if announced > PATIENCE * limit or (announced > limit and "expect" in request.headers):
+        raise _too_large(limit, cut=True)
     parts: list[bytes] = []
     size = 0
     async for part in request.stream():
         size += len(part)
-        if size > limit:
-            raise _too_large(limit)
-        parts.append(part)
+        if size <= limit:
+            parts.append(part)
+        elif size > PATIENCE * limit:
+            raise _too_large(limit, cut=True)
+    if size > limit:
+        raise _too_large(limit)
     body = parts[0] if len(parts) == 1 else b"".join(parts)
     coding = request.headers.get("content-encoding")
     return body if coding is None else _inflated(body, coding.strip().lower(), limit)
+
+
+def _announced(request: Request) -> int:
+    text = request.headers.get("content-length", "")
+    return int(text[:18]) if text.isascii() and text.isdigit() else 0
 
 
 def _inflated(body: bytes, coding: str, limit: int) -> bytes:
@@ -62,11 +80,11 @@ def _inflated(body: bytes, coding: str, limit: int) -> bytes:
     return plain
 
 
-def _too_large(limit: int) -> failures.TooLarge:
+def _too_large(limit: int, *, cut: bool = False) -> failures.TooLarge:
     return failures.TooLarge(
         f"The body is larger than {limit} bytes, the limit of this service.",
         [Fault("", f"larger than {limit} bytes")],
-        {"Connection": "close"},
+        {"Connection": "close"} if cut else {},
     )
 
 
@@ -89,38 +107,31 @@ def json_of(body: bytes, content_type: str) -> Any:
         raise failures.Malformed("The body can't be read.", fault.faults) from None
 
 
-def is_sheet(content_type: str) -> bool:
-    """Whether a body of this media type is a sheet."""
-    return content_type.partition(";")[0].strip().lower() in MEDIA_TYPES
-
-
-def sheet_of(body: bytes, content_type: str, question: type[BaseModel] | None = None) -> Sheet:
-    """A posted sheet: a question of a task, or a system.
-
-    Raises
-    ------
-    failures.Malformed
-    """
-    try:
-        return read_sheet(body, content_type, question)
-    except Malformed as fault:
-        raise failures.Malformed("The sheet can't be read.", fault.faults) from None
+def accepted(request: Request) -> str:
+    """What the caller accepts; several headers count as one list."""
+    return ",".join(request.headers.getlist("accept"))
 
 
 def parameters(request: Request, known: Collection[str]) -> Mapping[str, str]:
-    """The parameters of the address, all of which must be `known` and stand once."""
-    if not request.url.query:
+    """The parameters of the address, all of which must be `known` and stand once.
+
+    Raises
+    ------
+    failures.InvalidParameter
+    """
+    if not request.scope["query_string"]:
         return {}
     pairs = request.query_params.multi_items()
-    names = [name for name, _ in pairs]
-    unknown = [name for name in names if name not in known]
-    faults = [Fault("", f"unknown parameter '{name[:64]}'") for name in unknown]
-    faults += [
-        Fault("", f"the parameter '{name}' stands twice")
-        for name in dict.fromkeys(names)
-        if name in known and names.count(name) > 1
+    counts = Counter(name for name, _ in pairs)
+    found = dict(pairs)
+    faults = [
+        Fault(pointer((name,)), "unknown parameter" if name not in known else "it stands twice")
+        for name, count in counts.items()
+        if name not in known or count > 1
     ]
+    if found.get("problems", "table") != "table" and "problems" in known:
+        faults.append(Fault("/problems", "only 'table' is known"))
     if faults:
         listed = ", ".join(sorted(known)) or "none"
-        raise failures.UnknownParameter(f"Parameters known here: {listed}.", faults)
-    return dict(pairs)
+        raise failures.InvalidParameter(f"Parameters known here: {listed}.", faults)
+    return found

@@ -1,20 +1,20 @@
 """Systems and answers by their id."""
 
-from typing import Any
+from collections.abc import Mapping
 
 import orjson
 from starlette.requests import Request
 from starlette.responses import Response
 
-from schemas.faults import Invalid
 from schemas.reading import read_system
 from schemas.sheet import write_sheet
 from service import failures
-from service.routes.desk import Desk, invalid
-from service.routes.negotiation import choose, matches
-from service.routes.replies import ANSWER_PARAMETERS, answer_reply
-from service.routes.requests import body_of, is_sheet, json_of, parameters, sheet_of
-from service.tasks import summarize
+from service.routes.desk import Desk
+from service.routes.negotiation import choose
+from service.routes.posted import located, posted
+from service.routes.remembered import key_of
+from service.routes.replies import ANSWER_PARAMETERS, JSON, Reply, picked, picks, reply, wanted
+from service.routes.requests import accepted, body_of, parameters
 
 
 async def post_system(request: Request) -> Response:
@@ -22,56 +22,46 @@ async def post_system(request: Request) -> Response:
     desk: Desk = request.app.state.desk
     parameters(request, ("problems",))
     body = await body_of(request, desk.settings.max_body_bytes)
-    content_type = request.headers.get("content-type", "")
-    if is_sheet(content_type):
-        kept = await _keep_sheet(desk, body, content_type)
-    else:
-        try:
-            system = read_system(json_of(body, content_type))
-        except Invalid as fault:
-            raise invalid(fault) from None
+    system, sheet = posted(body, request.headers.get("content-type", ""), read_system)
+    with located(sheet):
         kept = await desk.keep_system(system)
     return Response(
         orjson.dumps(kept, option=orjson.OPT_SERIALIZE_NUMPY),
         201,
         {"Location": f"/v1/systems/{kept['id']}"},
-        media_type="application/json",
+        media_type=JSON,
     )
 
 
-async def _keep_sheet(desk: Desk, body: bytes, content_type: str) -> dict[str, Any]:
-    """Store a system that stands in a sheet; faults name its rows and columns."""
-    sheet = sheet_of(body, content_type)
-    try:
-        system = sheet.validated(read_system)
-    except Invalid as fault:
-        raise invalid(fault) from None
-    try:
-        return await desk.keep_system(system)
-    except failures.Invalid as failure:
-        raise failures.Invalid(failure.detail, sheet.located(failure.faults)) from None
-
-
 async def get_system(request: Request) -> Response:
-    """GET /v1/systems/{id}: the canonical content of a system, and its summary."""
+    """GET /v1/systems/{id}: a system and its summary, as JSON; as a sheet; or one value of it."""
     desk: Desk = request.app.state.desk
-    query = parameters(request, ("problems", "format"))
-    identity = request.path_params["identity"]
-    content = desk.store.system(identity)
-    if content is None:
+    key = key_of(request)
+    ready = desk.remembered.get(key)
+    if ready is None:
+        query = parameters(request, ("format", "pick", "problems"))
+        form = "json" if picks(query) else _form(request, query)
+        ready = await _system(desk, request.path_params["identity"], form, query.get("pick"))
+        desk.remembered.put(key, ready)
+    return ready.response(request)
+
+
+def _form(request: Request, query: Mapping[str, str]) -> str:
+    return choose(query.get("format"), accepted(request), {"json": JSON, "csv": "text/csv"})
+
+
+async def _system(desk: Desk, identity: str, form: str, pick: str | None) -> Reply:
+    if desk.store.system(identity) is None:
         raise failures.NotFound("No system with this id is stored here.")
-    etag = f'"{identity}"'
-    if matches(request.headers.get("if-none-match", ""), etag):
-        return Response(status_code=304, headers={"ETag": etag})
-    _, system = desk.stored_system(identity)
-    offered = {"json": "application/json", "csv": "text/csv"}
-    form = choose(query.get("format"), request.headers.get("accept", ""), offered)
+    content, system = desk.stored_system(identity)
     if form == "csv":
-        headers = {"ETag": f'"{identity}-csv"', "Vary": "Accept"}
-        return Response(write_sheet(system), headers=headers, media_type="text/csv; charset=utf-8")
-    document = {"id": identity, "system": orjson.Fragment(content), **summarize(system)}
+        return reply(write_sheet(system).encode(), "text/csv", "csv")
+    summary = await desk.summary(system)
+    document = {"id": identity, "system": orjson.Fragment(content), **summary}
     body = orjson.dumps(document, option=orjson.OPT_SERIALIZE_NUMPY)
-    return Response(body, headers={"ETag": etag}, media_type="application/json")
+    if pick is None:
+        return reply(body, JSON, "json")
+    return reply(picked(orjson.loads(body), pick).encode(), "text/plain", "pick")
 
 
 async def get_result(request: Request) -> Response:
@@ -82,5 +72,4 @@ async def get_result(request: Request) -> Response:
     if found is None:
         raise failures.NotFound("No answer with this id is stored here.")
     task, body = found
-    reply = answer_reply(body, task, query, request.headers.get("accept", ""))
-    return reply.response(request)
+    return wanted(task, query, accepted(request)).reply(body).response(request)

@@ -1,21 +1,23 @@
 """POST /v1/<task>, and the GET forms on a stored system."""
 
-from collections.abc import Awaitable, Callable
-from hashlib import blake2b
+from collections.abc import Awaitable, Callable, Mapping
+from functools import partial
 
+from pydantic import BaseModel
 from starlette.requests import Request
 from starlette.responses import Response
 
 from schemas.faults import Invalid
 from schemas.reading import read
 from service import failures
-from service.routes.desk import Answered, Desk, invalid
-from service.routes.replies import ANSWER_PARAMETERS, answer_reply
-from service.routes.requests import body_of, is_sheet, json_of, parameters, sheet_of
+from service.routes.desk import HIT, Answered, Desk, invalid
+from service.routes.posted import located, posted
+from service.routes.remembered import key_of
+from service.routes.replies import ANSWER_PARAMETERS, Wanted, wanted
+from service.routes.requests import accepted, body_of, parameters
 from service.tasks import TASKS, GetForm, Task
 
 Endpoint = Callable[[Request], Awaitable[Response]]
-HIT, MISS = "wideberth; hit", "wideberth; fwd=miss; stored"
 
 
 def post(task: Task) -> Endpoint:
@@ -24,71 +26,54 @@ def post(task: Task) -> Endpoint:
     async def endpoint(request: Request) -> Response:
         desk: Desk = request.app.state.desk
         body = await body_of(request, desk.settings.max_body_bytes)
-        accept = request.headers.get("accept", "")
         content_type = request.headers.get("content-type", "")
-        key = _key(task.name, request.url.query, accept, content_type, body)
+        key = key_of(request, content_type, body)
         known = desk.remembered.get(key)
         if known is not None:
             return known.response(request, **{"Cache-Status": HIT})
         query = parameters(request, ANSWER_PARAMETERS)
-        if is_sheet(content_type):
-            answered = await _ask_with_sheet(desk, task, body, content_type)
-        else:
-            question = desk.question(task, json_of(body, content_type))
+        form = wanted(task.name, query, accepted(request))
+        question, sheet = posted(body, content_type, partial(read, task.question), task.question)
+        with located(sheet):
             answered = await desk.ask(task, question)
-        reply = answer_reply(answered.body, task.name, query, accept)
-        reply.headers["Content-Location"] = f"/v1/results/{answered.identity}"
-        desk.remembered.put(key, reply)
-        return reply.response(request, **{"Cache-Status": HIT if answered.hit else MISS})
+        return _sent(request, key, form, answered)
 
     return endpoint
-
-
-async def _ask_with_sheet(desk: Desk, task: Task, body: bytes, content_type: str) -> Answered:
-    """The answer to a question that stands in a sheet; faults name its rows and columns."""
-    sheet = sheet_of(body, content_type, task.question)
-    try:
-        question = sheet.validated(lambda raw: read(task.question, raw))
-    except Invalid as fault:
-        raise invalid(fault) from None
-    try:
-        return await desk.ask(task, question)
-    except failures.Invalid as failure:
-        raise failures.Invalid(failure.detail, sheet.located(failure.faults)) from None
-
-
-def _key(*parts: str | bytes) -> bytes:
-    """A digest of everything that decides the reply."""
-    digest = blake2b(digest_size=20)
-    for part in parts:
-        data = part.encode() if isinstance(part, str) else part
-        digest.update(b"%d:" % len(data))
-        digest.update(data)
-    return digest.digest()
 
 
 def get(form: GetForm) -> Endpoint:
     """The endpoint that answers a question that stands in the address."""
     task = TASKS[form.task]
-    known = (*(parameter.name for parameter in form.parameters), *ANSWER_PARAMETERS)
+    allowed = (*(parameter.name for parameter in form.parameters), *ANSWER_PARAMETERS)
 
     async def endpoint(request: Request) -> Response:
         desk: Desk = request.app.state.desk
+        key = key_of(request)
+        known = desk.remembered.get(key)
+        if known is not None:
+            return known.response(request, **{"Cache-Status": HIT})
+        query = parameters(request, allowed)
+        shown = wanted(task.name, query, accepted(request), metrics=task.name == "separation")
         identity = request.path_params["identity"]
-        query = parameters(request, known)
         if desk.store.system(identity) is None:
             raise failures.NotFound("No system with this id is stored here.")
-        try:
-            raw = form.question(query)
-        except Invalid as fault:
-            raise invalid(fault) from None
-        question = desk.question(task, {"system_id": identity, **raw})
-        answered = await desk.ask(task, question)
-        accept = request.headers.get("accept", "")
-        reply = answer_reply(
-            answered.body, task.name, query, accept, metrics=task.name == "separation"
-        )
-        reply.headers["Content-Location"] = f"/v1/results/{answered.identity}"
-        return reply.response(request, **{"Cache-Status": HIT if answered.hit else MISS})
+        question = _question(task, form, identity, query)
+        return _sent(request, key, shown, await desk.ask(task, question))
 
     return endpoint
+
+
+def _question(task: Task, form: GetForm, identity: str, query: Mapping[str, str]) -> BaseModel:
+    try:
+        return read(task.question, {"system_id": identity, **form.question(query)})
+    except Invalid as fault:
+        raise invalid(fault) from None
+
+
+def _sent(request: Request, key: bytes, form: Wanted, answered: Answered) -> Response:
+    """The answer in its form, remembered for the next who asks the same in the same way."""
+    reply = form.reply(answered.body)
+    reply.headers["Content-Location"] = f"/v1/results/{answered.identity}"
+    desk: Desk = request.app.state.desk
+    desk.remembered.put(key, reply)
+    return reply.response(request, **{"Cache-Status": answered.status})

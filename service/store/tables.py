@@ -24,7 +24,7 @@ answers = Table(
     metadata,
     Column("id", String(64), primary_key=True),
     Column("task", String(64), nullable=False),
-    Column("system_id", String(64), nullable=False, index=True),
+    Column("system_id", String(64), nullable=False),
     Column("body", LargeBinary, nullable=False),
     Column("stored", Float, nullable=False),
 )

@@ -193,11 +193,13 @@ def test_line_ends_of_every_kind_are_read() -> None:
 def test_a_question_on_a_sheet_is_the_same_question() -> None:
     blocks = {
         **SHEET,
-        "operation": [["name", "min_rpm", "max_rpm"], ["run", "900", "1100"], ["slow", "5 Hz", "6 Hz"]],
+        "operation": [["name", "min_rpm", "max_rpm"], ["run", "900", "1100"],
+                      ["slow", "5 Hz", "6 Hz"]],
         "excitations": [
             ["name", "order", "frequency_hz"], ["unbalance", "1", ""], ["2xline", "", "100"],
         ],
-        "options": [["rule.kind", "rule.mode_above", "rule.mode_below"], ["fraction", "0.25", "15 %"]],
+        "options": [["rule.kind", "rule.mode_above", "rule.mode_below"],
+                    ["fraction", "0.25", "15 %"]],
         "forces_at": [["excitation", "at"], ["unbalance", "12/x|12/z"], ["unbalance", "motor/ry"]],
     }  # fmt: skip
     raw = {

@@ -137,7 +137,7 @@ def test_questions_can_stand_in_the_address(client: httpx.Client) -> None:
     ("method", "path", "options", "status", "name"),
     [
         ("POST", "/v1/modes", {"content": b"{"}, 400, "malformed"),
-        ("GET", "/health/live?verbose=1", {}, 400, "unknown-parameter"),
+        ("GET", "/health/live?verbose=1", {}, 400, "invalid-parameter"),
         ("GET", "/nowhere", {}, 404, "not-found"),
         ("GET", "/v1/results/a0", {}, 404, "not-found"),
         ("GET", "/v1/modes", {}, 405, "method-not-allowed"),
