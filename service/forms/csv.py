@@ -5,7 +5,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from io import StringIO
 from typing import Any
 
-RUNS_AS_FORMULA = ("=", "+", "-", "@", "\t", "\r")
+RUNS_AS_FORMULA = ("=", "+", "-", "@", "\t", "\r", "\n")
 
 
 def write(answer: Mapping[str, Any], tables: Mapping[str, Any]) -> str:

@@ -13,24 +13,29 @@ MOST_ROWS = 2000
 
 def write(answer: Mapping[str, Any], tables: Mapping[str, Any]) -> str:
     """All `tables`, then warnings, evidence and caution."""
-    shown_tables = [
-        {
-            "title": table.title,
-            "columns": table.columns,
-            "rows": [
-                [_cell(name, cell) for name, cell in zip(table.columns, row, strict=True)]
-                for row in list(table.rows(answer))[:MOST_ROWS]
-            ],
-        }
-        for table in tables.values()
-    ]
     return render(
         "answer.html",
         title=f"{answer['task'].replace('/', ' ').capitalize()} of a machine",
         answer=answer,
-        tables=shown_tables,
+        tables=[_shown(table, answer) for table in tables.values()],
         evidence=evidence_lines(answer["evidence"]),
     )
+
+
+def _shown(table: Any, answer: Mapping[str, Any]) -> dict[str, Any]:
+    """A table's cells, without columns in which nothing stands."""
+    rows = list(table.rows(answer))[:MOST_ROWS]
+    kept = [
+        place
+        for place in range(len(table.columns))
+        if not rows or any(row[place] is not None for row in rows)
+    ]
+    names = [table.columns[place] for place in kept]
+    return {
+        "title": table.title,
+        "columns": names,
+        "rows": [[_cell(table.columns[place], row[place]) for place in kept] for row in rows],
+    }
 
 
 def _cell(name: str, cell: object) -> dict[str, str]:

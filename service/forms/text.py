@@ -4,21 +4,32 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 WIDEST = 60
+SHORT = 24  # rows: a longer table after the first one is only named
 
 
 def write(answer: Mapping[str, Any], tables: Mapping[str, Any]) -> str:
-    """The first of `tables`, then readings, warnings, evidence and caution."""
-    table = next(iter(tables.values()))
+    """The first of `tables` and the short ones, then readings, warnings, evidence and caution."""
+    first, *others = tables.items()
     lines = [f"{answer['task']} of {answer['system_id']}", ""]
     if "verdict" in answer:
         lines += [f"verdict: {answer['verdict']}", answer.get("reading", ""), ""]
-    lines += aligned(table.title, *without_readings(table, answer))
-    readings = [item["reading"] for item in answer.get(next(iter(tables)), []) if "reading" in item]
+    lines += aligned(first[1].title, *without_readings(first[1], answer))
+    for name, table in others:
+        lines += ["", *_other(name, table, answer)]
+    readings = [item["reading"] for item in answer.get(first[0], []) if "reading" in item]
     for title, sentences in (("Readings", readings), ("Warnings", answer["warnings"])):
         if sentences:
             lines += ["", title, *(f"- {sentence}" for sentence in sentences)]
     lines += ["", "Evidence", *(f"- {said}" for said in evidence_lines(answer["evidence"]))]
     return "\n".join([*lines, "", answer["caution"], f"answer {answer['id']}", ""])
+
+
+def _other(name: str, table: Any, answer: Mapping[str, Any]) -> list[str]:
+    """A further table, or where to find it if it is long."""
+    columns, rows = without_readings(table, answer)
+    if len(rows) > SHORT:
+        return [table.title, f"({len(rows)} rows: ask for ?table={name})"]
+    return aligned(table.title, columns, rows)
 
 
 def without_readings(
@@ -74,6 +85,8 @@ def evidence_lines(evidence: Mapping[str, Any]) -> list[str]:
 
 def plain(value: object) -> str:
     """A value of the evidence in words."""
+    if value is None:
+        return "not taken here"
     if isinstance(value, bool):
         return "yes" if value else "no"
     if isinstance(value, list):

@@ -94,3 +94,18 @@ def test_what_is_no_sheet_is_refused(client: httpx.Client, text: str) -> None:
     )
     assert reply.status_code in (400, 422)
     assert reply.json()["errors"]
+
+
+def test_the_sheet_that_documents_a_task_is_its_json_example(client: httpx.Client) -> None:
+    paths = client.get("/openapi.json").json()["paths"]
+    contents = {
+        path: methods["post"]["requestBody"]["content"]
+        for path, methods in paths.items()
+        if "text/csv" in methods.get("post", {}).get("requestBody", {}).get("content", {})
+    }
+    assert len(contents) > 2
+    for path, content in contents.items():
+        sheet = post(client, path, content["text/csv"]["example"])
+        assert sheet.is_success, sheet.text
+        example = content["application/json"]["example"]
+        assert sheet.json()["id"] == client.post(path, json=example).json()["id"]
