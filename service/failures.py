@@ -199,8 +199,13 @@ class Unavailable(Failure):
     status = 503
     name = "unavailable"
 
-    def __init__(self, detail: str) -> None:
-        super().__init__(detail, headers={"Retry-After": "5"})
+    def __init__(
+        self,
+        detail: str,
+        faults: Sequence[Fault] = (),
+        headers: Mapping[str, str] | None = None,
+    ) -> None:
+        super().__init__(detail, faults, {"Retry-After": "5", **(headers or {})})
 
 
 FAILURES: dict[str, type[Failure]] = {

@@ -1,5 +1,5 @@
 """Where a task runs. Worker processes will join `in_line` here."""
 
-from service.engine.in_line import compute, is_at_once
+from service.engine.in_line import compute, in_thread, is_at_once
 
-__all__ = ["compute", "is_at_once"]
+__all__ = ["compute", "in_thread", "is_at_once"]

@@ -9,18 +9,21 @@ from anyio import CapacityLimiter
 from anyio.to_thread import run_sync
 
 Result = TypeVar("Result")
-AT_ONCE_UP_TO = 60  # degrees of freedom: below, a thread costs more than it frees
+AT_ONCE_UP_TO = 60  # degrees of freedom or parts: below, a thread costs more than it frees
 
 
 def is_at_once(size: int) -> bool:
-    """Whether a system of `size` degrees of freedom is computed without giving way to others."""
+    """Whether work on so many degrees of freedom or parts is done without giving way to others."""
     return size <= AT_ONCE_UP_TO
 
 
 async def compute(size: int, work: Callable[[], Result]) -> Result:
-    """Run `work` on a system of `size` degrees of freedom."""
-    if is_at_once(size):
-        return work()
+    """Do `work` on so many degrees of freedom or parts."""
+    return work() if is_at_once(size) else await in_thread(work)
+
+
+async def in_thread(work: Callable[[], Result]) -> Result:
+    """Do `work` while others are answered."""
     return await run_sync(work, limiter=_limiter())
 
 

@@ -56,7 +56,7 @@ class Desk:
         if content is None:
             content, system = self.stored_system(identity)
         try:
-            size = self.check_size(system, "/system")
+            size = self.size_of(system, "/system")
         except Invalid as fault:
             raise invalid(_in_question(fault, question)) from None
         if wanted in self._running:
@@ -111,25 +111,25 @@ class Desk:
     async def summary(self, system: AnySystem) -> dict[str, Any]:
         """What a system comes to."""
         try:
-            size = self.check_size(system, "")
+            size = self.size_of(system, "")
             return await compute(size, lambda: summarize(system))
         except Invalid as fault:
             raise invalid(fault) from None
 
-    def check_size(self, system: AnySystem, prefix: str) -> int:
-        """The degrees of freedom of a system.
+    def size_of(self, system: AnySystem, prefix: str) -> int:
+        """How much there is to compute: degrees of freedom, or parts if they are more.
 
         Raises
         ------
         Invalid
-            More of them than the operator allows.
+            More degrees of freedom than the operator allows.
         """
         size, most = degrees_of_freedom(system), self.settings.max_degrees_of_freedom
         if size > most:
             field = "bodies" if system.kind == "bodies" else "degrees_of_freedom"
             detail = f"{size} degrees of freedom; the limit of this service is {most}"
             raise Invalid([Fault(f"{prefix}/{field}", detail)])
-        return size
+        return max(size, len(system.connections)) if system.kind == "bodies" else size
 
 
 def _in_question(found: Invalid, question: Any) -> Invalid:

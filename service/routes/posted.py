@@ -9,13 +9,17 @@ from pydantic import BaseModel
 from schemas.faults import Invalid, Malformed
 from schemas.sheet import MEDIA_TYPES, Sheet, read_sheet
 from service import failures
+from service.engine import in_thread
 from service.routes.desk import invalid
 from service.routes.requests import json_of
 
 Model = TypeVar("Model")
 
 
-def posted(
+LARGE = 100_000  # bytes: reading more takes longer than others should wait
+
+
+async def posted(
     body: bytes,
     content_type: str,
     read: Callable[[Any], Model],
@@ -29,13 +33,17 @@ def posted(
     ------
     failures.UnsupportedMedia, failures.Malformed, failures.Invalid
     """
-    sheet = _sheet(body, content_type, question)
-    try:
-        if sheet is None:
-            return read(json_of(body, content_type)), None
-        return sheet.validated(read), sheet
-    except Invalid as fault:
-        raise invalid(fault) from None
+
+    def work() -> tuple[Model, Sheet | None]:
+        sheet = _sheet(body, content_type, question)
+        try:
+            if sheet is None:
+                return read(json_of(body, content_type)), None
+            return sheet.validated(read), sheet
+        except Invalid as fault:
+            raise invalid(fault) from None
+
+    return work() if len(body) <= LARGE else await in_thread(work)
 
 
 def _sheet(body: bytes, content_type: str, question: type[BaseModel] | None) -> Sheet | None:

@@ -22,7 +22,7 @@ async def post_system(request: Request) -> Response:
     desk: Desk = request.app.state.desk
     parameters(request, ("problems",))
     body = await body_of(request, desk.settings.max_body_bytes)
-    system, sheet = posted(body, request.headers.get("content-type", ""), read_system)
+    system, sheet = await posted(body, request.headers.get("content-type", ""), read_system)
     with located(sheet):
         kept = await desk.keep_system(system)
     return Response(

@@ -33,7 +33,8 @@ def post(task: Task) -> Endpoint:
             return known.response(request, **{"Cache-Status": HIT})
         query = parameters(request, ANSWER_PARAMETERS)
         form = wanted(task.name, query, accepted(request))
-        question, sheet = posted(body, content_type, partial(read, task.question), task.question)
+        reader = partial(read, task.question)
+        question, sheet = await posted(body, content_type, reader, task.question)
         with located(sheet):
             answered = await desk.ask(task, question)
         return _sent(request, key, form, answered)
@@ -67,7 +68,7 @@ def _question(task: Task, form: GetForm, identity: str, query: Mapping[str, str]
     try:
         return read(task.question, {"system_id": identity, **form.question(query)})
     except Invalid as fault:
-        raise invalid(fault) from None
+        raise invalid(form.in_address(fault, query)) from None
 
 
 def _sent(request: Request, key: bytes, form: Wanted, answered: Answered) -> Response:

@@ -19,11 +19,25 @@ class QueryParameter:
 
 @dataclass(frozen=True, slots=True)
 class GetForm:
-    """GET /v1/systems/{id}/NAME: a task, its parameters, and the question they make."""
+    """GET /v1/systems/{id}/NAME: a task, its parameters, and the question they make.
+
+    `origins` names the parameters that a field of the question may come from.
+    """
 
     task: str
     parameters: tuple[QueryParameter, ...]
     question: Callable[[Mapping[str, str]], dict[str, Any]]
+    origins: Mapping[str, tuple[str, ...]]
+
+    def in_address(self, found: Invalid, query: Mapping[str, str]) -> Invalid:
+        """Faults of the question, each at the parameter of the address that it comes from."""
+        by_place: dict[str, Fault] = {}
+        for fault in found.faults:
+            *_, field = fault.pointer.split("/")
+            names = [name for name in self.origins.get(field, ()) if name in query]
+            place = pointer((names[0],)) if names else fault.pointer
+            by_place.setdefault(place, Fault(place, fault.detail))
+        return Invalid(list(by_place.values()))
 
 
 class _Query:
@@ -41,6 +55,8 @@ class _Query:
         values = []
         for text in filter(None, self.query.get(name, "").split(",")):
             try:
+                if "_" in text:  # which Python reads between digits
+                    raise ValueError(text)
                 values.append(float(text))
             except ValueError:
                 self.fault(name, f"'{text[:32]}' isn't a number")
@@ -112,6 +128,7 @@ GET_FORMS: Mapping[str, GetForm] = {
             QueryParameter("shape_scale", "mass or largest (no unit).", "largest"),
         ),
         _modes,
+        {},
     ),
     "separation": GetForm(
         "separation",
@@ -126,5 +143,14 @@ GET_FORMS: Mapping[str, GetForm] = {
             QueryParameter("fraction", "Margin required on both sides (no unit).", "0.2"),
         ),
         _separation,
+        {
+            "min_rpm": ("rpm", "min_rpm"),
+            "max_rpm": ("rpm", "max_rpm"),
+            "order": ("orders",),
+            "frequency_hz": ("lines_hz",),
+            "name": ("orders", "lines_hz"),
+            "mode_above": ("fraction",),
+            "mode_below": ("fraction",),
+        },
     ),
 }
