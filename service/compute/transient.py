@@ -27,7 +27,7 @@ class Input:
 
 
 @dataclass(frozen=True, slots=True)
-class Course:
+class TimeHistory:
     """The motion of a machine from its initial state, under its inputs.
 
     Attributes
@@ -118,18 +118,18 @@ def _real_product(A: Complexes, z: Complexes) -> Floats:
     return product
 
 
-def course(
+def time_history(
     machine: NormalCoordinates,
     states: StateSpace,
     initial: tuple[Floats, Floats],
     inputs: list[Input],
-) -> Course:
+) -> TimeHistory:
     """The motion from initial coordinates and rates (t,) each."""
     displaced, moving = initial
     start = states.from_displacement @ displaced + states.from_velocity @ moving
     acting = tuple(item for item in inputs if item.forces.any())
     assert len(displaced) == len(machine.mass)
-    return Course(states, np.asarray(start, dtype=complex), displaced, moving, acting)
+    return TimeHistory(states, np.asarray(start, dtype=complex), displaced, moving, acting)
 
 
 @dataclass(frozen=True, slots=True)
@@ -148,7 +148,7 @@ class Term:
     drift: Floats | None = None
 
 
-def terms(found: Course, rows: Floats) -> list[Term]:
+def terms(found: TimeHistory, rows: Floats) -> list[Term]:
     """The terms of a free motion seen through `rows` (o, t), by the size of the roots.
 
     Roots on a circle around a critically damped one mean nothing by themselves and are left out.
@@ -167,7 +167,7 @@ def terms(found: Course, rows: Floats) -> list[Term]:
     return listed
 
 
-def dissipated(found: Course, B: Floats, C: Floats, end: float) -> float:
+def dissipated(found: TimeHistory, B: Floats, C: Floats, end: float) -> float:
     """∫ vᵀCv dt of a free motion from 0 to `end`, in closed form, J.
 
     Parameters

@@ -1,4 +1,4 @@
-"""A machine over time: from the question to its course."""
+"""A machine over time: from the question to its time history."""
 
 from dataclasses import dataclass
 from typing import Any
@@ -10,7 +10,7 @@ from schemas.response.transient import TransientQuestion
 from service.compute.machine import Floats
 from service.compute.signals import Signal
 from service.compute.state_space import StateSpace, state_space
-from service.compute.transient import Course, Input, course
+from service.compute.transient import Input, TimeHistory, time_history
 from service.tasks.dynamics import Dynamics, unknown
 from service.tasks.inputs import base_quantity, base_signal, force_signal
 from service.tasks.view import ORDERS, Moving, View, view_of
@@ -21,7 +21,7 @@ AS_GIVEN = 1e-9  # of the largest: an initial displacement that the machine can 
 
 @dataclass(frozen=True)
 class Run:
-    """A machine, what acts on it, and its course.
+    """A machine, what acts on it, and its time history.
 
     Attributes
     ----------
@@ -35,7 +35,7 @@ class Run:
     pushes: list[tuple[Signal, Floats]]
     moving: list[Moving]
     bases: list[tuple[Signal, Signal, Signal] | None]
-    course: Course
+    time_history: TimeHistory
     states: StateSpace
 
     def values(self, times: Floats, view: View | None = None) -> Floats:
@@ -43,7 +43,7 @@ class Run:
         view = view or self.view
         B = self.dynamics.machine.B
         rows = [(power, part.real @ B) for power, part in zip(view.powers, view.rows, strict=True)]
-        found = self.course.seen(rows, times)
+        found = self.time_history.seen(rows, times)
         for (_, _, base), signals, own in zip(self.moving, self.bases, view.grounds, strict=True):
             moved = (own + view.rows @ base.carried).real
             for power, part in zip(view.powers, moved, strict=True):
@@ -53,7 +53,7 @@ class Run:
 
 
 def run_of(dynamics: Dynamics, question: TransientQuestion) -> Run:
-    """The course of a machine under what the question says.
+    """The time history of a machine under what the question says.
 
     Raises
     ------
@@ -80,7 +80,7 @@ def run_of(dynamics: Dynamics, question: TransientQuestion) -> Run:
             ]
     states = state_space(machine, question.at_rpm)
     _check_growth(states, question)
-    found = course(machine, states, _initial(dynamics, question), inputs)
+    found = time_history(machine, states, _initial(dynamics, question), inputs)
     return Run(dynamics, question, view, pushes, moving, bases, found, states)
 
 

@@ -125,7 +125,7 @@ def _modal_terms(run: Run) -> list[dict[str, Any]]:
                 )
             ],
         }
-        for index, term in enumerate(terms(run.course, rows)[:MOST_TERMS])
+        for index, term in enumerate(terms(run.time_history, rows)[:MOST_TERMS])
     ]
 
 

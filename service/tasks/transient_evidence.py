@@ -33,7 +33,7 @@ def _residual(run: "Run", times: Floats) -> float | None:
     if dynamics.damping.H.any():
         return None
     B, rpm = dynamics.machine.B, run.question.at_rpm
-    q, v, a = (run.course.seen([(power, B)], times) for power in range(3))
+    q, v, a = (run.time_history.seen([(power, B)], times) for power in range(3))
     f = sum((np.outer(force, signal.at(times)) for signal, force in run.pushes), 0.0 * q)
     matrices = (dynamics.elastic(rpm).real, dynamics.viscous(rpm), dynamics.analysed.M)
     parts = [A @ x for A, x in zip(matrices, (q, v, a), strict=True)]
@@ -55,11 +55,11 @@ def _energy_balance(run: "Run", end: float) -> float | None:
         return None
     B = dynamics.machine.B
     times = np.array([0.0, end])
-    q, v = (run.course.seen([(power, B)], times) for power in range(2))
+    q, v = (run.time_history.seen([(power, B)], times) for power in range(2))
     energy = ((v * (dynamics.analysed.M @ v)).sum(axis=0) + (q * (dynamics.K @ q)).sum(axis=0)) / 2
     C = dynamics.viscous(rpm)
     modal = dynamics.dissipation.modal(np.eye(len(C)))
-    lost = dissipated(run.course, B, (C + C.T) / 2 + modal, end)
+    lost = dissipated(run.time_history, B, (C + C.T) / 2 + modal, end)
     before, after = energy.tolist()
     scale = max(abs(before), abs(after), abs(lost))
     return (after + lost - before) / scale if scale > 0.0 else 0.0

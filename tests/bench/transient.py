@@ -19,7 +19,7 @@ from threadpoolctl import threadpool_limits
 
 from service.compute.signals import samples
 from service.compute.state_space import state_space
-from service.compute.transient import Input, course
+from service.compute.transient import Input, time_history
 from tests.compute.test_harmonic import drawn, machine
 
 Floats = NDArray[np.float64]
@@ -47,7 +47,7 @@ def compare(dampers: int) -> str:
         own = machine(M, K, C)
         push = Input(samples(corners, heights), b @ own.B)
         none = np.zeros(SIZE)
-        found = course(own, state_space(own, 0.0), (none, none), [push])
+        found = time_history(own, state_space(own, 0.0), (none, none), [push])
         return found.seen([(0, seen @ own.B)], times)
 
     inverse = np.linalg.inv(M)

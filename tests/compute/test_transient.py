@@ -11,19 +11,19 @@ from scipy.linalg import expm
 from service.compute.normal_coordinates import NormalCoordinates
 from service.compute.signals import Signal, samples
 from service.compute.state_space import state_space
-from service.compute.transient import Course, Input, course
+from service.compute.transient import Input, TimeHistory, time_history
 from tests.compute.test_harmonic import drawn, machine
 
 Floats = NDArray[np.float64]
 
 
-def moved(own: NormalCoordinates, found: Course, times: Floats, power: int = 0) -> Floats:
+def moved(own: NormalCoordinates, found: TimeHistory, times: Floats, power: int = 0) -> Floats:
     return found.seen([(power, own.B)], times)
 
 
-def started(own: NormalCoordinates, M: Floats, q: Floats, v: Floats, *inputs: Input) -> Course:
+def started(own: NormalCoordinates, M: Floats, q: Floats, v: Floats, *inputs: Input) -> TimeHistory:
     initial = (own.B.T @ M @ q, own.B.T @ M @ v)
-    return course(own, state_space(own, 0.0), initial, list(inputs))
+    return time_history(own, state_space(own, 0.0), initial, list(inputs))
 
 
 def exponential(M: Floats, C: Floats, K: Floats, q: Floats, v: Floats, t: float) -> Floats:
