@@ -15,11 +15,10 @@ from service.compute.machine import Floats, Shapes
 from service.compute.participation import mobility_shares
 from service.compute.real_modes import Wanted
 from service.compute.separation import Excitation, Required, barred, coincidence_rpm, margin
-from service.compute.solve import lowest_modes
 from service.compute.speed_map import Map, crossings, follow
 from service.tasks.damped import damped_evidence, kind_of_root, solve_damped, table_warnings
 from service.tasks.damping import damping_of, is_damped, speed_matters
-from service.tasks.machines import Analysed, analyse
+from service.tasks.machines import Analysed, analyse, solved
 from service.tasks.modes import evidence, hertz, kinds
 from service.tasks.speedmap import Turned, map_evidence, turned
 from service.tasks.wary import geometry_warnings, solution_warnings, system_warnings
@@ -215,7 +214,7 @@ def candidates_of(system: AnySystem, question: SeparationQuestion, top: float) -
 def _undamped(
     system: AnySystem, analysed: Analysed, top: float, places: dict[str, list[int]]
 ) -> Candidates:
-    found = lowest_modes(analysed.pencil, Wanted(limit=(2 * pi * top) ** 2, spare=1))
+    found = solved(system, analysed.pencil, Wanted(limit=(2 * pi * top) ** 2, spare=1))
     shares = _participations(analysed, analysed.pencil.full(found.shapes), places)
     modes = [
         Fixed(index + 1, hertz(float(found.values[index])), 0.0, False, _of(shares, index))

@@ -12,10 +12,9 @@ from schemas.system import AnySystem, BodiesSystem
 from service.compute.damped_modes import NEARLY_DEFECTIVE
 from service.compute.damped_system import DampedModes, Damping, damped_modes
 from service.compute.real_modes import ALL_UP_TO, ELSE, Modes, Wanted
-from service.compute.solve import lowest_modes
 from service.compute.whirl import whirl
 from service.tasks.damping import damping_of, speed_matters, stiffness_of
-from service.tasks.machines import Analysed, analyse
+from service.tasks.machines import Analysed, analyse, solved
 from service.tasks.modes import (
     CAUTION,
     effective_mass,
@@ -64,7 +63,7 @@ def solve_damped(system: AnySystem, rpm: float, *, dissipation: bool, count: int
         damping = damping.without_dissipation()
     size = analysed.pencil.size
     used = size if size <= PROJECTED_FROM else min(size, max(PROJECTED_ON, 3 * count))
-    undamped = lowest_modes(analysed.pencil, Wanted(count=used))
+    undamped = solved(system, analysed.pencil, Wanted(count=used))
     found = damped_modes(
         analysed.pencil, undamped, damping, analysed.M, stiffness_of(system, analysed, rpm), rpm
     )

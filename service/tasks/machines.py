@@ -16,7 +16,8 @@ from service.compute.constraints import Ties
 from service.compute.memory import check_memory, dense_bytes, prefer_sparse
 from service.compute.participation import support_motions
 from service.compute.pencil import pencil_of_matrices
-from service.compute.solve import AnyPencil, pencil_at
+from service.compute.real_modes import Modes, Wanted
+from service.compute.solve import AnyPencil, lowest_modes, pencil_at
 from service.compute.sparse_modes import SparsePencil
 from service.tasks.matrices import dense, matrix_of, symmetric_part
 from service.tasks.translation import NUMBER_OF, machine_of
@@ -75,6 +76,20 @@ def analyse(system: AnySystem, rpm: float = 0.0) -> Analysed:
         if isinstance(system, BodiesSystem):
             return _of_bodies(system, rpm)
         return _of_matrices(system)
+    except m.Unsound as fault:
+        raise Invalid([Fault(_place(system, fault.part), fault.detail)]) from None
+
+
+def solved(system: AnySystem, pencil: AnyPencil, wanted: Wanted) -> Modes:
+    """The wanted modes of an analysed system.
+
+    Raises
+    ------
+    Invalid
+        They can't be computed, or not within the memory; pointers start at the system.
+    """
+    try:
+        return lowest_modes(pencil, wanted)
     except m.Unsound as fault:
         raise Invalid([Fault(_place(system, fault.part), fault.detail)]) from None
 
@@ -149,7 +164,9 @@ def _place(system: AnySystem, part: tuple[str | int, ...]) -> str:
     if isinstance(system, MatricesSystem):
         if kind == "degree of freedom":
             return pointer(("degrees_of_freedom", system.degrees_of_freedom.index(str(rest[0]))))
-        return pointer(part) if kind == "mass" else "/mass"
+        if kind in ("mass", "stiffness"):
+            return pointer(part)
+        return "/degrees_of_freedom" if kind == "modes" else "/mass"
     if kind == "degree of freedom":
         name = str(rest[0]).rpartition("/")[0]
         bodies = [item.name for item in system.bodies]

@@ -16,8 +16,7 @@ from service.compute.participation import (
     strain_shares,
 )
 from service.compute.real_modes import Modes, Wanted
-from service.compute.solve import lowest_modes
-from service.tasks.machines import Analysed, analyse
+from service.tasks.machines import Analysed, analyse, solved
 from service.tasks.readings import mode_readings
 from service.tasks.wary import modes_warnings, system_warnings
 
@@ -38,11 +37,11 @@ def undamped_modes(system: AnySystem, question: ModesQuestion) -> dict[str, Any]
     """
     try:
         analysed = analyse(system)
+        limit = None if question.below_hz is None else (2 * pi * question.below_hz) ** 2
+        found = solved(system, analysed.pencil, Wanted(question.count, limit))
     except Invalid as fault:
         raise fault.under("/system") from None
     rows = shape_rows(analysed, question)
-    limit = None if question.below_hz is None else (2 * pi * question.below_hz) ** 2
-    found = lowest_modes(analysed.pencil, Wanted(question.count, limit))
     return {
         "degrees_of_freedom": question.shapes_of or list(analysed.names),
         "modes": mode_list(analysed, found, question.shape_scale, rows),

@@ -14,12 +14,11 @@ from service.compute.damped_modes import Complexes
 from service.compute.damped_system import Damping, has_entries
 from service.compute.pencil import Pencil
 from service.compute.real_modes import Wanted
-from service.compute.solve import lowest_modes
 from service.compute.speed_map import Map, Turning, crossings, follow, onsets, root_state, turning
 from service.compute.whirl import whirl
 from service.tasks.damped import spins_of, table_warnings
 from service.tasks.damping import damping_of
-from service.tasks.machines import Analysed, analyse
+from service.tasks.machines import Analysed, analyse, solved
 from service.tasks.modes import CAUTION
 from service.tasks.readings import number, percent
 from service.tasks.wary import geometry_warnings
@@ -76,7 +75,7 @@ def turned(system: AnySystem, rpm: float, *, dissipation: bool) -> Turned:
             [Fault("/bodies", "a massless motion is damped or held by a bearing: give that body a "
                    "mass or an inertia to follow the machine over speed")]
         )  # fmt: skip
-    undamped = lowest_modes(pencil, Wanted(count=pencil.size))
+    undamped = solved(system, pencil, Wanted(count=pencil.size))
     shapes = pencil.full(undamped.shapes)
     return Turned(system, analysed, damping, turning(undamped.values, shapes, damping, rpm))
 

@@ -7,9 +7,8 @@ import numpy as np
 from schemas.system import AnySystem, BodiesSystem
 from service.compute.real_modes import Wanted
 from service.compute.rigid_motions import rigid_motions
-from service.compute.solve import lowest_modes
 from service.compute.sparse_modes import SparsePencil
-from service.tasks.machines import Analysed, analyse, degrees_of_freedom
+from service.tasks.machines import Analysed, analyse, degrees_of_freedom, solved
 from service.tasks.wary import geometry_warnings
 
 
@@ -22,7 +21,7 @@ def summarize(system: AnySystem) -> dict[str, Any]:
         The system can't be computed; pointers start at the system.
     """
     analysed = analyse(system)
-    free = _free(analysed)
+    free = _free(system, analysed)
     mass, centre = _mass(system)
     return {
         "kind": system.kind,
@@ -36,10 +35,10 @@ def summarize(system: AnySystem) -> dict[str, Any]:
     }
 
 
-def _free(analysed: Analysed) -> int:
+def _free(system: AnySystem, analysed: Analysed) -> int:
     """Number of rigid-body motions; of a large system those among the lowest seven modes."""
     if isinstance(analysed.pencil, SparsePencil):
-        return int(lowest_modes(analysed.pencil, Wanted(count=7)).rigid.sum())
+        return int(solved(system, analysed.pencil, Wanted(count=7)).rigid.sum())
     return int(rigid_motions(analysed.pencil).shape[1])
 
 

@@ -90,3 +90,26 @@ def test_a_beam_with_too_few_elements_for_its_highest_mode_is_warned_of() -> Non
     fine = modes(beam((["z"], ["z"]), 16), count=4)["warnings"]
     assert any("elements" in warning for warning in coarse)
     assert not any("elements" in warning for warning in fine)
+
+
+def test_a_large_system_that_cannot_be_solved_is_named_as_a_fault() -> None:
+    from tests.tasks.asking import modes
+
+    size, bare = 4100, 7
+    numbers = list(range(size))
+    values = [0.0 if number == bare else 1.0 for number in numbers]
+    diagonal = {"rows": numbers, "columns": numbers, "values": values}
+    large = {
+        "kind": "matrices",
+        "degrees_of_freedom": [f"n{number}/x" for number in numbers],
+        "mass": diagonal,
+        "stiffness": diagonal,
+    }
+    with pytest.raises(Invalid) as caught:
+        modes(large, count=3)
+    assert caught.value.faults[0].pointer == f"/system/degrees_of_freedom/{bare}"
+    whole = {**large, "mass": {**diagonal, "values": [1.0] * size}}
+    whole["stiffness"] = {**diagonal, "values": [1.0 + number for number in numbers]}
+    with pytest.raises(Invalid) as caught:
+        modes(whole, below_hz=100.0)
+    assert "2000" in caught.value.faults[0].detail
